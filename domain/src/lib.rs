@@ -5,5 +5,6 @@
 #![forbid(unsafe_code)]
 
 pub mod ids;
+pub mod ledger;
 pub mod stamp;
 pub mod units;
