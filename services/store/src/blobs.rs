@@ -2,10 +2,10 @@
 
 use std::collections::BTreeSet;
 
+use domain::book::command::Blob;
 use domain::ledger::tree::Hash;
 
 use crate::StoreError;
-use crate::contract::Blob;
 use crate::db::{Conn, on};
 use crate::log::hash;
 use crate::sites::SiteNumber;

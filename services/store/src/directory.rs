@@ -1,10 +1,10 @@
 //! Names and secrets of persons: outside the log, so that a person can be forgotten and every proof still holds.
 
+use domain::book::command::{DirectoryPerson, DirectoryWrite};
 use domain::ids::PersonId;
 use uuid::Uuid;
 
 use crate::StoreError;
-use crate::contract::{DirectoryPerson, DirectoryWrite};
 use crate::db::{Conn, on};
 use crate::sites::SiteNumber;
 

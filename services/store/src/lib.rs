@@ -7,7 +7,6 @@
 pub mod blobs;
 mod bulk;
 mod commands;
-mod contract;
 pub mod db;
 pub mod directory;
 mod error;

@@ -2,15 +2,16 @@
 
 use std::collections::HashMap;
 
+use domain::book::Sealed;
+use domain::book::subject::Subject;
 use domain::ids::EntryId;
+use domain::ledger::entry::Entry;
 use domain::ledger::tree::{Frontier, Hash};
 use domain::stamp::Micros;
 use sqlx::QueryBuilder;
 
 use crate::StoreError;
 use crate::bulk::pieces;
-use crate::contract::subject::Subject;
-use crate::contract::{Entry, Sealed};
 use crate::db::{Conn, on};
 use crate::sites::SiteNumber;
 
@@ -165,13 +166,13 @@ pub async fn keep_head(
     site: SiteNumber,
     head: &KeptHead,
 ) -> Result<(), StoreError> {
-    let size = signed(head.size)?;
+    let length = signed(head.size)?;
     let kept: i64 =
-        on!(conn, |c| sqlx::query_scalar(IS_KEPT).bind(site.0).bind(size).fetch_one(c).await)?;
+        on!(conn, |c| sqlx::query_scalar(IS_KEPT).bind(site.0).bind(length).fetch_one(c).await)?;
     if kept == 0 {
         on!(conn, |c| sqlx::query(KEEP_HEAD)
             .bind(site.0)
-            .bind(size)
+            .bind(length)
             .bind(head.root.as_bytes().as_slice())
             .bind(head.note.as_str())
             .execute(c)
@@ -365,9 +366,9 @@ pub(crate) async fn append(
 }
 
 fn head_of(site: SiteNumber, row: Option<HeadRow>) -> Result<Head, StoreError> {
-    let (size, frontier, root, note, last_recorded_at, clock_corrected) =
+    let (length, frontier, root, note, last_recorded_at, clock_corrected) =
         row.ok_or_else(|| StoreError::inconsistent(format!("site {} has no head", site.0)))?;
-    let frontier = Frontier::from_bytes(unsigned(size)?, &frontier)
+    let frontier = Frontier::from_bytes(unsigned(length)?, &frontier)
         .map_err(|e| StoreError::inconsistent(e.to_string()))?;
     Ok(Head {
         frontier,

@@ -2,11 +2,12 @@
 
 use std::collections::BTreeMap;
 
+use domain::book::table::{Cell, CellKind, Change, Column, Row, Table};
+use domain::book::tables::tables;
 use sqlx::QueryBuilder;
 
 use crate::StoreError;
 use crate::bulk::pieces;
-use crate::contract::table::{Cell, CellKind, Change, Row, Table};
 use crate::db::{Conn, on};
 use crate::schema::SITE;
 use crate::sites::SiteNumber;
@@ -14,7 +15,7 @@ use crate::sites::SiteNumber;
 /// The changes of a group: of several to one row, the last counts.
 #[derive(Debug, Default)]
 pub(crate) struct Pending {
-    tables: BTreeMap<&'static str, (&'static Table, BTreeMap<Vec<Cell>, Option<Row>>)>,
+    tables: BTreeMap<&'static str, BTreeMap<Vec<Cell>, Change>>,
 }
 
 impl Pending {
@@ -27,27 +28,23 @@ impl Pending {
         changes: impl IntoIterator<Item = Change>,
     ) -> Result<(), StoreError> {
         for change in changes {
-            let (table, key, row) = match change {
-                Change::Put(row) => (row.table, checked_key(&row)?, Some(row)),
-                Change::Remove { table, key } => (table, key, None),
+            let (table, key) = match &change {
+                Change::Put(row) => (row.table, checked_key(row)?),
+                Change::Remove { table, key } => (*table, key.clone()),
             };
-            self.tables
-                .entry(table.name)
-                .or_insert_with(|| (table, BTreeMap::new()))
-                .1
-                .insert(key, row);
+            self.tables.entry(table.name).or_default().insert(key, change);
         }
         Ok(())
     }
 
-    /// What the group made of one row: `None` if it did not touch it, `Some(None)` if it removed it.
-    pub(crate) fn find(&self, table: &str, key: &[Cell]) -> Option<Option<&Row>> {
-        self.tables.get(table)?.1.get(key).map(Option::as_ref)
+    /// What the group did to one row, if anything.
+    pub(crate) fn find(&self, table: &str, key: &[Cell]) -> Option<&Change> {
+        self.tables.get(table)?.get(key)
     }
 
-    /// Every row there is, by table and key: what a replay from an empty book leaves.
+    /// The rows that are there afterwards.
     pub(crate) fn rows(&self, table: &str) -> impl Iterator<Item = &Row> {
-        self.tables.get(table).into_iter().flat_map(|(_, rows)| rows.values().flatten())
+        self.tables.get(table).into_iter().flat_map(BTreeMap::values).filter_map(row_of)
     }
 
     /// Writes everything.
@@ -59,21 +56,26 @@ impl Pending {
         conn: &mut Conn<'_>,
         site: SiteNumber,
     ) -> Result<(), StoreError> {
-        for (table, rows) in self.tables.values() {
-            let put: Vec<&Row> = rows.values().flatten().collect();
+        for table in tables() {
+            let Some(changes) = self.tables.get(table.name) else { continue };
+            let put: Vec<&Row> = changes.values().filter_map(row_of).collect();
             for piece in pieces(&put) {
                 upsert(conn, site, table, piece).await?;
             }
-            let removed: Vec<&[Cell]> = rows
-                .iter()
-                .filter(|(_, row)| row.is_none())
-                .map(|(key, _)| key.as_slice())
-                .collect();
-            for piece in pieces(&removed) {
+            let gone = changes.iter().filter(|(_, change)| row_of(change).is_none());
+            let gone: Vec<&[Cell]> = gone.map(|(key, _)| key.as_slice()).collect();
+            for piece in pieces(&gone) {
                 remove(conn, site, table, piece).await?;
             }
         }
         Ok(())
+    }
+}
+
+const fn row_of(change: &Change) -> Option<&Row> {
+    match change {
+        Change::Put(row) => Some(row),
+        Change::Remove { .. } => None,
     }
 }
 
@@ -89,8 +91,7 @@ pub(crate) async fn clear(
 }
 
 fn checked_key(row: &Row) -> Result<Vec<Cell>, StoreError> {
-    let fits = |(cell, column): (&Cell, &crate::contract::table::Column)| match (cell, column.kind)
-    {
+    let fits = |(cell, column): (&Cell, &Column)| match (cell, column.kind) {
         (Cell::Null, _) => column.nullable,
         (Cell::Int(_), CellKind::Int)
         | (Cell::Text(_), CellKind::Text)

@@ -27,7 +27,7 @@ pub struct Prover {
 }
 
 impl Prover {
-    /// That the entry `seq` is among the first `size` (RFC 9162, section 2.1.3).
+    /// That the entry `seq` is among the first `among` (RFC 9162, section 2.1.3).
     ///
     /// # Errors
     /// [`NoProof`].
@@ -36,9 +36,9 @@ impl Prover {
         conn: &mut Conn<'_>,
         site: SiteNumber,
         seq: u64,
-        size: u64,
+        among: u64,
     ) -> Result<Vec<Hash>, NoProof> {
-        self.prove(conn, site, &ProofPlan::inclusion(seq, size)?, size).await
+        self.prove(conn, site, &ProofPlan::inclusion(seq, among)?, among).await
     }
 
     /// That the log of the first `new` entries continues that of the first `old` (RFC 9162, section 2.1.4).
@@ -60,9 +60,9 @@ impl Prover {
         conn: &mut Conn<'_>,
         site: SiteNumber,
         plan: &ProofPlan,
-        size: u64,
+        among: u64,
     ) -> Result<Vec<Hash>, NoProof> {
-        let edge = self.edge(conn, site, size).await?;
+        let edge = self.edge(conn, site, among).await?;
         let tiles = tiles::fetch(conn, site, edge.reads(plan)).await?;
         Ok(edge.prove(plan, &tiles).map_err(tiles::odd)?)
     }
@@ -72,14 +72,14 @@ impl Prover {
         &self,
         conn: &mut Conn<'_>,
         site: SiteNumber,
-        size: u64,
+        among: u64,
     ) -> Result<Edge, NoProof> {
         let mut edge = self.edges().get(&site).cloned().unwrap_or_default();
-        if edge.size() < size {
+        if edge.size() < among {
             let head = log::head(conn, site).await?;
             let there = head.frontier.size();
-            if there < size {
-                return Err(ProofError::OutsideTree { index: size - 1, size: there }.into());
+            if there < among {
+                return Err(ProofError::OutsideTree { index: among - 1, size: there }.into());
             }
             tiles::catch_up(conn, site, &mut edge, &head).await?;
             self.edges().insert(site, edge.clone());

@@ -1,12 +1,13 @@
 //! Lays on a desk what a decision asks for, from the tables.
 
+use domain::book::Desk;
+use domain::book::command::Need;
+use domain::book::subject::Subject;
+use domain::book::table::{Cell, Row};
+use domain::book::tables::CODE;
 use domain::ledger::tree::Hash;
 use uuid::Uuid;
 
-use crate::contract::subject::Subject;
-use crate::contract::table::{Cell, Row};
-use crate::contract::tables::CODE;
-use crate::contract::{Desk, Need};
 use crate::error::chain;
 use crate::rows::Select;
 use crate::sites::Site;

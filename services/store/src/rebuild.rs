@@ -3,13 +3,15 @@
 //! The replay holds the whole book in memory, once as states and once as rows.
 
 use std::collections::BTreeMap;
-use std::fmt;
+use std::fmt::{self, Write as _};
 
+use domain::book::Desk;
+use domain::book::table::{Cell, Change, Row, Table};
+use domain::book::tables::COMMAND;
+use domain::book::tables::tables;
+use domain::ledger::entry::Entry;
 use domain::ledger::tree::Hash;
 
-use crate::contract::table::{Cell, Change, Row, Table};
-use crate::contract::tables::COMMAND;
-use crate::contract::{Desk, Entry, tables};
 use crate::error::chain;
 use crate::projections::{Pending, clear};
 use crate::rows::Select;
@@ -61,9 +63,16 @@ fn shown(cell: &Cell) -> String {
         Cell::Text(text) => text.clone(),
         Cell::Bytes(bytes) => match uuid::Uuid::from_slice(bytes) {
             Ok(id) => id.to_string(),
-            Err(_) => bytes.iter().map(|byte| format!("{byte:02x}")).collect(),
+            Err(_) => hexadecimal(bytes),
         },
     }
+}
+
+fn hexadecimal(bytes: &[u8]) -> String {
+    bytes.iter().fold(String::new(), |mut text, byte| {
+        let _ = write!(text, "{byte:02x}");
+        text
+    })
 }
 
 /// Every row that differs from a fresh replay of a site's log; none if all is well.

@@ -1,9 +1,9 @@
 //! Reads rows of projection tables: what pages and lists are made of.
 
+use domain::book::table::{Cell, CellKind, Column, Row, Table};
 use sqlx::{QueryBuilder, Row as _};
 
 use crate::StoreError;
-use crate::contract::table::{Cell, CellKind, Column, Row, Table};
 use crate::db::{Conn, on};
 use crate::projections::push_cell;
 use crate::schema::SITE;

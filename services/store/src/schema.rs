@@ -5,11 +5,11 @@
 
 use std::fmt::Write as _;
 
+use domain::book::table::{CellKind, Column, Table};
+use domain::book::tables::{PROJECTION_VERSION, tables};
 use sqlx::AssertSqlSafe;
 
 use crate::StoreError;
-use crate::contract::table::{CellKind, Column, Table};
-use crate::contract::{PROJECTION_VERSION, tables};
 use crate::db::{Conn, on};
 
 /// The name of the integer that every table keeps a site under.

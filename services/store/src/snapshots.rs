@@ -6,8 +6,9 @@
 use std::collections::HashMap;
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
-use crate::contract::subject::Subject;
-use crate::contract::{Desk, Loaded};
+use domain::book::subject::Subject;
+use domain::book::{Desk, Loaded};
+
 use crate::sites::{Site, SiteNumber};
 use crate::{Conn, StoreError, log, read};
 

@@ -71,14 +71,14 @@ pub(crate) async fn catch_up(
     edge: &mut Edge,
     head: &Head,
 ) -> Result<(), StoreError> {
-    let size = head.frontier.size();
-    let plan = EdgePlan::new(size);
-    if edge.size() < plan.leaves().start || edge.size() > size {
+    let end = head.frontier.size();
+    let plan = EdgePlan::new(end);
+    if edge.size() < plan.leaves().start || edge.size() > end {
         let tiles = fetch(conn, site, plan.tiles()).await?;
         let leaves = leaf_hashes(conn, site, plan.leaves()).await?;
         *edge = plan.load(&leaves, &tiles).map_err(odd)?;
-    } else if edge.size() < size {
-        for leaf in leaf_hashes(conn, site, edge.size()..size).await? {
+    } else if edge.size() < end {
+        for leaf in leaf_hashes(conn, site, edge.size()..end).await? {
             edge.push(leaf);
         }
     } else {

@@ -139,11 +139,7 @@ async fn check(
     Ok(())
 }
 
-async fn check_blobs(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    walk: &Walk,
-) -> Result<u64, Stopped> {
+async fn check_blobs(conn: &mut Conn<'_>, site: SiteNumber, walk: &Walk) -> Result<u64, Stopped> {
     let names = blobs::digests(conn, site).await?;
     for (digest, seq) in &walk.documents {
         if !names.contains(digest) {

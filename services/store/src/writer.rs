@@ -15,14 +15,15 @@ use std::fmt;
 use std::sync::atomic::{AtomicU64, Ordering};
 use std::sync::{Arc, Mutex, PoisonError};
 
+use domain::book::command::{Command, Refusal};
 use domain::ids::SiteId;
+use domain::ledger::entry::Entry;
 use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::Micros;
 use tokio::sync::{mpsc, oneshot};
 use tokio::task::JoinHandle;
 use uuid::Uuid;
 
-use crate::contract::{Command, Entry, Refusal};
 use crate::snapshots::Published;
 use crate::{Db, StoreError};
 
@@ -31,6 +32,9 @@ pub const GROUP: usize = 256;
 
 /// Signs a log's size and root under its origin, and gives the signed note.
 pub type Sign = dyn Fn(&str, u64, &Hash) -> Result<String, String> + Send + Sync;
+
+/// Hears which head of which origin is durable now.
+pub type Committed = dyn Fn(&str, &TreeHead) + Send + Sync;
 
 /// What the writer cannot have from its arguments.
 #[derive(Clone)]
@@ -42,7 +46,7 @@ pub struct Tools {
     /// Signs the head of a group before it is committed.
     pub sign: Arc<Sign>,
     /// Told after the commit which head of which origin is now durable, to be remembered beside the key.
-    pub committed: Arc<dyn Fn(&str, &TreeHead) + Send + Sync>,
+    pub committed: Arc<Committed>,
 }
 
 impl fmt::Debug for Tools {

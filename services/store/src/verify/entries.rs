@@ -1,11 +1,11 @@
 //! What can be checked about an entry by itself, on all processors at once.
 
+use domain::ledger::entry::{ENVELOPE, Entry, MAX_SUBJECTS};
 use domain::ledger::tree::leaf_hash;
 use domain::units::Quantity;
 use serde_json::Value;
 
 use super::Fault;
-use crate::contract::{ENVELOPE, Entry, MAX_SUBJECTS};
 use crate::error::chain;
 use crate::log::Stored;
 
@@ -69,7 +69,7 @@ fn wrong_amount(value: &Value) -> Option<String> {
             if !is_quantity {
                 return members.values().find_map(wrong_amount);
             }
-            let read = <Quantity as serde::Deserialize>::deserialize(value);
+            let read = serde_json::from_value::<Quantity>(value.clone());
             let is_right = read.is_ok_and(|quantity| quantity.is_consistent());
             (!is_right).then(|| value.to_string())
         }

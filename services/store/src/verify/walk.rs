@@ -2,7 +2,9 @@
 
 use std::collections::{BTreeMap, HashMap};
 
+use domain::book::subject::Subject;
 use domain::ids::SiteId;
+use domain::ledger::entry::Entry;
 use domain::ledger::note::{Checkpoint, VerifierKey};
 use domain::ledger::tiles::{Edge, Tile};
 use domain::ledger::tree::Hash;
@@ -10,8 +12,6 @@ use domain::stamp::Micros;
 
 use super::Fault;
 use super::entries::Checked;
-use crate::contract::Entry;
-use crate::contract::subject::Subject;
 use crate::error::chain;
 use crate::log::{Head, KeptHead};
 
@@ -88,7 +88,11 @@ impl Walk {
     pub(super) fn finish(&self, head: &Head) -> Result<(), Fault> {
         let ours = self.edge.frontier();
         if ours.size() != head.frontier.size() {
-            let what = format!("the head counts {} entries, but there are {}", head.frontier.size(), ours.size());
+            let what = format!(
+                "the head counts {} entries, but there are {}",
+                head.frontier.size(),
+                ours.size()
+            );
             return Err(Fault::of_log(what));
         }
         if ours != head.frontier || ours.root() != head.root {
@@ -101,9 +105,9 @@ impl Walk {
             }
         }
         match self.kept.keys().next_back() {
-            Some(size) if *size > ours.size() => {
-                Err(Fault::of_log(format!("a head of {size} entries left the house, but there are fewer")))
-            }
+            Some(size) if *size > ours.size() => Err(Fault::of_log(format!(
+                "a head of {size} entries left the house, but there are fewer"
+            ))),
             _ => Ok(()),
         }
     }
@@ -158,7 +162,10 @@ impl Walk {
         if kept.root == self.edge.frontier().root() {
             Ok(())
         } else {
-            Err(Fault::of_log(format!("the head of {} entries that left the house is another", kept.size)))
+            Err(Fault::of_log(format!(
+                "the head of {} entries that left the house is another",
+                kept.size
+            )))
         }
     }
 

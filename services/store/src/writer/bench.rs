@@ -1,9 +1,12 @@
 //! One site's place in the writer: its desk, and what has to be laid on it before a command can be decided.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::Arc;
 
+use domain::book::command::{Act, Command, Decision, Need, Stop};
+use domain::book::subject::Subject;
+use domain::book::{Desk, Loaded};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::TreeHead;
 use domain::stamp::Micros;
@@ -11,8 +14,6 @@ use domain::stamp::Micros;
 use super::sheet::Sheet;
 use super::{Answer, Receipt, Tools, WriteError};
 use crate::commands::{self, Earlier};
-use crate::contract::subject::Subject;
-use crate::contract::{Act, Command, Decision, Desk, Loaded, Need, Stop};
 use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
@@ -32,6 +33,8 @@ pub(super) struct Bench {
     edge: Edge,
     /// Subjects of earlier groups, and in which they were last needed. Good only if the locked counter agrees.
     shelf: HashMap<Subject, (Arc<Loaded>, u64)>,
+    /// What the latest group had on the desk.
+    touched: HashSet<Subject>,
     group: u64,
 }
 
@@ -46,7 +49,14 @@ pub(super) struct Done {
 impl Bench {
     pub(super) fn new(site: Site) -> Self {
         let desk = Desk::new(site.id);
-        Self { site, desk, edge: Edge::default(), shelf: HashMap::new(), group: 0 }
+        Self {
+            site,
+            desk,
+            edge: Edge::default(),
+            shelf: HashMap::new(),
+            touched: HashSet::new(),
+            group: 0,
+        }
     }
 
     /// Decides the commands in turn and writes what they come to. After an error this bench must be thrown away.
@@ -76,14 +86,15 @@ impl Bench {
             0 => None,
             _ => Some(sheet.write(conn, &self.site, &mut self.edge, tools).await?),
         };
-        self.tidy(&sheet);
-        Ok(Done { answers, head, entries: sheet.len() })
+        let entries = sheet.len();
+        self.tidy(sheet.subjects);
+        Ok(Done { answers, head, entries })
     }
 
     /// Hands the states of subjects that somebody reads to the readers. Called after the commit.
     pub(super) fn publish(&self, published: &Published) {
-        for (subject, (loaded, group)) in &self.shelf {
-            if *group == self.group {
+        for subject in &self.touched {
+            if let Some((loaded, _)) = self.shelf.get(subject) {
                 published.renew(self.site.number, *subject, loaded);
             }
         }
@@ -216,8 +227,9 @@ impl Bench {
     }
 
     /// Ends the group: moves its subjects to the shelf, and clears that if it is crowded.
-    fn tidy(&mut self, sheet: &Sheet) {
-        for subject in &sheet.subjects {
+    fn tidy(&mut self, subjects: HashSet<Subject>) {
+        self.touched = subjects;
+        for subject in &self.touched {
             if let Some(loaded) = self.desk.loaded(subject).cloned() {
                 self.desk.forget(subject);
                 self.shelf.insert(*subject, (loaded, self.group));

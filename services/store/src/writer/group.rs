@@ -1,16 +1,17 @@
 //! A task that commits whatever waits together, and falls back to one command a commit when a group fails.
 
+use std::collections::hash_map::Entry;
 use std::collections::{BTreeMap, HashMap};
 use std::sync::Arc;
 use std::sync::atomic::Ordering;
 
+use domain::book::command::Command;
 use domain::ids::SiteId;
 use domain::ledger::tree::TreeHead;
 use tokio::sync::mpsc;
 
 use super::bench::Bench;
 use super::{Answer, GROUP, Job, Shared, WriteError};
-use crate::contract::Command;
 use crate::error::chain;
 use crate::{Conn, StoreError, sites};
 
@@ -120,11 +121,13 @@ async fn bench<'a>(
     conn: &mut Conn<'_>,
     site: SiteId,
 ) -> Result<Option<&'a mut Bench>, StoreError> {
-    if !benches.contains_key(&site) {
-        let Some(found) = sites::by_id(conn, site).await? else { return Ok(None) };
-        benches.insert(site, Bench::new(found));
+    match benches.entry(site) {
+        Entry::Occupied(bench) => Ok(Some(bench.into_mut())),
+        Entry::Vacant(place) => {
+            let found = sites::by_id(conn, site).await?;
+            Ok(found.map(|site| place.insert(Bench::new(site))))
+        }
     }
-    Ok(benches.get_mut(&site))
 }
 
 /// Which places of the group are whose.

@@ -3,6 +3,11 @@
 use std::collections::{HashMap, HashSet};
 use std::sync::Arc;
 
+use domain::book::command::{Blob, Command, DirectoryWrite, Need};
+use domain::book::subject::Subject;
+use domain::book::table::{Cell, Change};
+use domain::book::tables::CODE;
+use domain::book::{Appended, Desk, Position, Sealed};
 use domain::ids::{CommandId, EntryId};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::{Hash, TreeHead};
@@ -10,10 +15,6 @@ use domain::stamp::Micros;
 
 use super::clock::Clock;
 use super::{Receipt, Tools, WriteError};
-use crate::contract::subject::Subject;
-use crate::contract::table::Cell;
-use crate::contract::tables::CODE;
-use crate::contract::{Appended, Blob, Command, Desk, DirectoryWrite, Need, Position, Sealed};
 use crate::log::{self, Head};
 use crate::projections::Pending;
 use crate::sites::Site;
@@ -86,8 +87,12 @@ impl Sheet {
             }
             Need::Code(kind, code) => {
                 let key = [Cell::from(kind.name()), Cell::from(code.as_str())];
-                let Some(row) = self.pending.find(CODE.name, &key) else { return Ok(false) };
-                desk.put_code(*kind, code, row.map(read::coded_id).transpose()?);
+                let id = match self.pending.find(CODE.name, &key) {
+                    Some(Change::Put(row)) => Some(read::coded_id(row)?),
+                    Some(Change::Remove { .. }) => None,
+                    None => return Ok(false),
+                };
+                desk.put_code(*kind, code, id);
             }
             Need::Blob(digest) => {
                 let named = |blob: &&Blob| Hash(blob.digest).to_string() == *digest;
