@@ -54,6 +54,9 @@ pub async fn check(db: &Db) -> Result<(), StoreError> {
 
 const APPLIED: &str = "select version from _sqlx_migrations where success order by version";
 
+#[cfg(test)]
+pub(crate) const TEXTS: &[&str] = &[APPLIED];
+
 /// A database without our tables was never migrated.
 fn missing(error: sqlx::Error) -> StoreError {
     match error {

@@ -10,6 +10,7 @@ use domain::book::{Desk, Loaded};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::TreeHead;
 use domain::stamp::Micros;
+use uuid::Uuid;
 
 use super::sheet::Sheet;
 use super::{Answer, Receipt, Tools, WriteError};
@@ -133,8 +134,9 @@ impl Bench {
             Ok(recorded) => recorded,
             Err(behind) => return Ok(Err(behind)),
         };
+        let mut drawn = Drawn::new(&*tools.draw);
         for _ in 0..ROUNDS {
-            let mut draw = || (tools.draw)();
+            let mut draw = drawn.from_the_start();
             let desk = &self.desk;
             let outcome =
                 catch_unwind(AssertUnwindSafe(|| desk.decide(command, recorded, &mut draw)));
@@ -239,6 +241,29 @@ impl Bench {
         if self.shelf.len() > ROOM {
             let latest = self.group;
             self.shelf.retain(|_, (_, group)| *group == latest);
+        }
+    }
+}
+
+/// The ids of one command: each time it is decided it draws the same ones, so that what it asks for comes to an end.
+struct Drawn<'a> {
+    draw: &'a (dyn Fn() -> Uuid + Send + Sync),
+    ids: Vec<Uuid>,
+}
+
+impl<'a> Drawn<'a> {
+    const fn new(draw: &'a (dyn Fn() -> Uuid + Send + Sync)) -> Self {
+        Self { draw, ids: Vec::new() }
+    }
+
+    fn from_the_start(&mut self) -> impl FnMut() -> Uuid + use<'_, 'a> {
+        let mut next = 0;
+        move || {
+            if next == self.ids.len() {
+                self.ids.push((self.draw)());
+            }
+            next += 1;
+            self.ids[next - 1]
         }
     }
 }

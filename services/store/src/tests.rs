@@ -1,0 +1,10 @@
+//! Tests on both engines, with commands of the real book.
+
+mod acts;
+mod append_only;
+mod book;
+mod proving;
+mod rebuilding;
+mod texts;
+mod verifying;
+mod writing;
