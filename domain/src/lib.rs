@@ -4,6 +4,9 @@
 //! proposal is held against, [`rules`] where the law and the practice stand as data.
 #![forbid(unsafe_code)]
 
+pub mod checks;
 pub mod ids;
+pub mod rules;
+pub mod settings;
 pub mod stamp;
 pub mod units;
