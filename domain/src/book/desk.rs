@@ -272,7 +272,7 @@ impl Desk {
             let leaf_hash = leaf_hash(&bytes);
             position.frontier.push(leaf_hash);
             position.size += 1;
-            position.last_recorded_at = now;
+            position.last_recorded_at = corrected_clock(&draft).unwrap_or(now);
             appended.changes.extend(self.take(&entry)?);
             appended.entries.push(Sealed {
                 seq: entry.seq,
@@ -581,6 +581,14 @@ fn difference(before: Vec<Row>, after: Vec<Row>, changes: &mut Vec<Change>) {
     }
     changes
         .extend(left.into_iter().map(|((_, key), row)| Change::Remove { table: row.table, key }));
+}
+
+/// After a correction the log goes on from what the clock says now.
+const fn corrected_clock(draft: &Draft) -> Option<Micros> {
+    match &draft.body {
+        Body::ClockCorrected(body) => Some(body.clock),
+        _ => None,
+    }
 }
 
 fn command_row(command: &Command, first: u64, entries: u32) -> Change {
