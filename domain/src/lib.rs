@@ -4,6 +4,8 @@
 //! proposal is held against, [`rules`] where the law and the practice stand as data.
 #![forbid(unsafe_code)]
 
+pub mod densimetry;
 pub mod ids;
+pub mod nitrogen;
 pub mod stamp;
 pub mod units;
