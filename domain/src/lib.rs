@@ -5,6 +5,7 @@
 #![forbid(unsafe_code)]
 
 pub mod densimetry;
+pub mod forecast;
 pub mod ids;
 pub mod nitrogen;
 pub mod stamp;
