@@ -10,8 +10,12 @@ mod sample;
 fn main() -> Result<(), Box<dyn std::error::Error>> {
     let mut long = sample::record();
     long.readings = std::iter::repeat_with(|| long.readings.clone()).take(80).flatten().collect();
-    for (name, record) in [("first", sample::record()), ("again", sample::record()), ("long", long)]
-    {
+    for (name, record) in [
+        ("first", sample::record()),
+        ("again", sample::record()),
+        ("preview", sample::wash()),
+        ("long", long),
+    ] {
         let start = Instant::now();
         let pdf = records::batch_record(&record)?;
         let spent = start.elapsed();

@@ -482,8 +482,8 @@ fn furniture(record: &BatchRecord) -> Furniture {
             "{} · entries 1 to {} · ledger head {} at {} · {root}…",
             record.batch.code, record.entries_n, record.head.origin, record.head.size
         ),
-        warnings: warnings.into_iter().map(str::to_owned).collect(),
-        deferral: DEFERRAL.to_owned(),
+        warnings,
+        deferral: DEFERRAL,
     }
 }
 

@@ -5,7 +5,7 @@
 
 use crate::batch_record::{Chart, ChartDose};
 use crate::font::Weight;
-use crate::mark::Mark;
+use crate::mark::{Mark, NOTCH};
 use crate::page::{Canvas, Ink, Spot, Type};
 use crate::sheet::{BODY, LEFT, RIGHT, Sheet};
 
@@ -48,6 +48,7 @@ impl Panel {
 
 /// Draws the chart at the current place of the sheet, with a sentence that says the same.
 pub(crate) fn draw(sheet: &mut Sheet, chart: &Chart) {
+    let chart = &drawable(chart);
     let has_temperature = chart.points.iter().any(|point| point.temperature.is_some());
     let height = if has_temperature { 114.0 } else { 86.0 };
     sheet.need(height);
@@ -79,11 +80,25 @@ pub(crate) fn draw(sheet: &mut Sheet, chart: &Chart) {
     sheet.canvas.tags.elements[figure].alternative = Some(in_words(chart));
     sheet.y = lowest + 7.0;
     let unlabelled = labelled.iter().filter(|row| row.is_none()).count();
-    let mut caption = in_words(chart);
-    if unlabelled > 0 {
-        caption += &format!(" {unlabelled} dose labels found no room; all doses are listed below.");
+    let note = if unlabelled > 0 {
+        format!(" {unlabelled} dose labels found no room; all doses are in the tables below.")
+    } else {
+        String::new()
+    };
+    sheet.paragraph(BODY, &format!("{}{note}", in_words(chart)));
+}
+
+/// The chart without values that are no numbers, doses in order of time.
+fn drawable(chart: &Chart) -> Chart {
+    let mut chart = chart.clone();
+    chart.points.retain(|point| point.hours.is_finite() && point.gravity.is_finite());
+    for point in &mut chart.points {
+        point.temperature = point.temperature.filter(|temperature| temperature.is_finite());
     }
-    sheet.paragraph(BODY, &caption);
+    chart.doses.retain(|dose| dose.hours.is_finite());
+    chart.doses.sort_by(|one, other| one.hours.total_cmp(&other.hours));
+    chart.expected_final = chart.expected_final.filter(|gravity| gravity.is_finite());
+    chart
 }
 
 /// The chart as a sentence, for those who do not see it.
@@ -91,18 +106,18 @@ fn in_words(chart: &Chart) -> String {
     let (Some(first), Some(last)) = (chart.points.first(), chart.points.last()) else {
         return "No readings to draw.".to_owned();
     };
-    let mut text = format!(
-        "Gravity from {:.4} to {:.4} in {:.0} hours, {} readings, {} doses marked by their verdict's notch.",
+    let expected = chart.expected_final.map_or_else(String::new, |gravity| {
+        format!(" Broken line: expected final gravity {gravity:.4}.")
+    });
+    format!(
+        "Gravity from {:.4} to {:.4} in {:.0} hours; {} readings; {} doses, each under the notch of its verdict.\
+         {expected} Values in force only: amended ones are struck through in the table of readings.",
         first.gravity,
         last.gravity,
         last.hours - first.hours,
         chart.points.len(),
         chart.doses.len()
-    );
-    if let Some(expected) = chart.expected_final {
-        text += &format!(" Broken line: expected final gravity {expected:.4}.");
-    }
-    text + " Values in force only; amended ones are struck through in the table of readings."
+    )
 }
 
 fn hours(chart: &Chart) -> (f32, f32) {
@@ -142,7 +157,6 @@ fn temperature_panel(chart: &Chart, top: f32) -> Panel {
 
 fn range(values: impl Iterator<Item = f32>, otherwise: (f32, f32)) -> (f32, f32) {
     values
-        .filter(|value| value.is_finite())
         .fold(None, |range: Option<(f32, f32)>, value| {
             Some(range.map_or((value, value), |(low, high)| (low.min(value), high.max(value))))
         })
@@ -220,18 +234,22 @@ fn label_y(panel_top: f32, row: usize) -> f32 {
 }
 
 /// For each dose the row of its label, so that no two labels touch; `None` if no row has room.
+/// From the last dose to the first: an earlier label that would cover a later line goes above it.
 fn place_labels(canvas: &Canvas, chart: &Chart) -> Vec<Option<usize>> {
     let panel = gravity_panel(chart, 0.0);
-    let mut ends = [f32::MIN; LABEL_ROWS];
-    let place = |dose: &ChartDose| {
+    let mut begins = [f32::MAX; LABEL_ROWS];
+    let mut place = |dose: &ChartDose| {
         let (shown, _) = canvas.typeface.legible(&dose.label);
-        let start = panel.x(dose.hours) - crate::mark::NOTCH - 1.0;
+        let start = panel.x(dose.hours) - NOTCH - 1.0;
         let end = panel.x(dose.hours) + 1.0 + canvas.width(&shown, DOSE);
-        let row = ends.iter().position(|&taken| taken < start).filter(|_| end <= RIGHT + 1.0)?;
-        ends[row] = end;
+        let row = begins.iter().position(|&taken| end < taken).filter(|_| end <= RIGHT + 1.0)?;
+        begins[row..].iter_mut().for_each(|begin| *begin = begin.min(start));
+        begins[..row].iter_mut().for_each(|begin| *begin = begin.min(panel.x(dose.hours)));
         Some(row)
     };
-    chart.doses.iter().map(place).collect()
+    let mut rows: Vec<Option<usize>> = chart.doses.iter().rev().map(&mut place).collect();
+    rows.reverse();
+    rows
 }
 
 /// Round values inside a range, at most `most` or so, a step of 1, 2 or 5 times a power of ten.
@@ -248,7 +266,7 @@ fn ticks(low: f32, high: f32, most: usize) -> Vec<f32> {
 
 /// Whole hours that people think in: shifts and days.
 fn hour_ticks(first: f32, last: f32) -> Vec<f32> {
-    let step = [6.0, 12.0, 24.0, 48.0, 96.0, 168.0, 336.0, 720.0]
+    let step = [6.0, 12.0, 24.0, 48.0, 96.0, 168.0, 336.0, 720.0, 2_160.0, 8_760.0]
         .into_iter()
         .find(|step| (last - first) / step <= 12.0)
         .unwrap_or((last - first) / 12.0);

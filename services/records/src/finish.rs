@@ -59,7 +59,7 @@ pub(crate) fn finish(sheet: Sheet, meta: &Meta) -> Result<Vec<u8>, RecordError> 
     catalog.set("Outlines", outline);
     catalog.set("PageMode", "UseOutlines");
 
-    document.version = "1.7".to_owned();
+    "1.7".clone_into(&mut document.version);
     let id = Object::String(identity(&document), StringFormat::Hexadecimal);
     document.trailer.set("ID", vec![id.clone(), id]);
     document.compress();

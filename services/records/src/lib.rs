@@ -4,6 +4,9 @@
 //! ledger nor the rules. A record is evidence of what the ledger holds, not of what the ledger
 //! was never told; it defers to local requirements on every page.
 
+#[cfg(test)]
+extern crate self as records;
+
 mod chart;
 mod error;
 mod finish;

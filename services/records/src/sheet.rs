@@ -16,6 +16,8 @@ const TOP: f32 = 22.0;
 const BOTTOM: f32 = 266.0;
 /// Kept free for the page number at the right of the footer.
 const NUMBER_ROOM: f32 = 28.0;
+/// For the left and the right head of a page.
+const HEAD_ROOM: (f32, f32) = (92.0, 70.0);
 
 const HEADING: Type = Type::new(Weight::Bold, 11.0, Ink::Black);
 const SMALL: Type = Type::new(Weight::Regular, 7.0, Ink::Grey);
@@ -40,9 +42,9 @@ pub(crate) struct Furniture {
     /// First line of the footer; the page number stands at its right.
     pub(crate) foot: String,
     /// Said in bold on every page: a simulation, a preview.
-    pub(crate) warnings: Vec<String>,
+    pub(crate) warnings: Vec<&'static str>,
     /// The deferral statement.
-    pub(crate) deferral: String,
+    pub(crate) deferral: &'static str,
 }
 
 /// The document while it is filled.
@@ -82,9 +84,9 @@ impl Sheet {
         }
     }
 
-    /// A section's heading, kept with what follows, and its bookmark.
+    /// A section's heading and its bookmark. The caller has seen to it that what follows has room
+    /// on the same page.
     pub(crate) fn heading(&mut self, title: &str) {
-        self.need(34.0);
         if self.y > TOP + 0.1 {
             self.y += 5.0;
         }
@@ -115,17 +117,11 @@ impl Sheet {
     /// Draws what stands on every page, once all pages are known.
     pub(crate) fn furnish(&mut self, furniture: &Furniture) {
         let total = self.canvas.page_count();
-        let head = (self.canvas.legible(&furniture.head.0), self.canvas.legible(&furniture.head.1));
-        let given = [(SMALL, &furniture.foot)]
-            .into_iter()
-            .chain(furniture.warnings.iter().map(|line| (SMALL_BOLD, line)))
-            .chain([(SMALL, &furniture.deferral)]);
-        let mut lines = Vec::new();
-        for (set, line) in given {
-            let line = self.canvas.legible(line);
-            let broken = wrap(&self.canvas, set, RIGHT - LEFT - NUMBER_ROOM, &line);
-            lines.extend(broken.into_iter().map(|line| (set, line)));
-        }
+        let head = (
+            self.one_line(SMALL, HEAD_ROOM.0, &furniture.head.0),
+            self.one_line(SMALL, HEAD_ROOM.1, &furniture.head.1),
+        );
+        let lines = self.footer(furniture);
         for page in 0..total {
             self.canvas.turn_to(page);
             let number = format!("page {} of {total}", page + 1);
@@ -142,6 +138,26 @@ impl Sheet {
                 }
             });
         }
+    }
+
+    /// The lines of the footer; the first leaves room for the page number.
+    fn footer(&mut self, furniture: &Furniture) -> Vec<(Type, String)> {
+        let foot = self.one_line(SMALL, RIGHT - LEFT - NUMBER_ROOM, &furniture.foot);
+        let mut lines = vec![(SMALL, foot)];
+        let warnings = furniture.warnings.iter().map(|line| (SMALL_BOLD, *line));
+        for (set, line) in warnings.chain([(SMALL, furniture.deferral)]) {
+            let broken = wrap(&self.canvas, set, RIGHT - LEFT, line);
+            lines.extend(broken.into_iter().map(|line| (set, line)));
+        }
+        lines
+    }
+
+    /// A text cut to what one line holds. The whole of it stands on the first page.
+    fn one_line(&mut self, set: Type, width: f32, text: &str) -> String {
+        let text = self.canvas.legible(text).replace('\n', " ");
+        let mut lines = wrap(&self.canvas, set, width - 2.0, &text).into_iter();
+        let first = lines.next().unwrap_or_default();
+        if lines.next().is_some() { format!("{first}…") } else { first }
     }
 }
 

@@ -20,11 +20,11 @@ pub(crate) fn profile() -> Vec<u8> {
     let tags = [
         (*b"desc", text("sRGB IEC61966-2.1")),
         (*b"cprt", text("No copyright, use freely")),
-        (*b"wtpt", typed(b"XYZ ", &WHITE)),
-        (*b"chad", typed(b"sf32", &ADAPTATION)),
-        (*b"rXYZ", typed(b"XYZ ", &RED)),
-        (*b"gXYZ", typed(b"XYZ ", &GREEN)),
-        (*b"bXYZ", typed(b"XYZ ", &BLUE)),
+        (*b"wtpt", typed(*b"XYZ ", &WHITE)),
+        (*b"chad", typed(*b"sf32", &ADAPTATION)),
+        (*b"rXYZ", typed(*b"XYZ ", &RED)),
+        (*b"gXYZ", typed(*b"XYZ ", &GREEN)),
+        (*b"bXYZ", typed(*b"XYZ ", &BLUE)),
         (*b"rTRC", curve()),
         (*b"gTRC", curve()),
         (*b"bTRC", curve()),
@@ -58,7 +58,7 @@ fn header(size: usize) -> Vec<u8> {
     header
 }
 
-fn typed(kind: &[u8; 4], values: &[i64]) -> Vec<u8> {
+fn typed(kind: [u8; 4], values: &[i64]) -> Vec<u8> {
     let mut bytes = kind.to_vec();
     bytes.extend([0; 4]);
     bytes.extend(values.iter().flat_map(|&value| fixed(value)));

@@ -5,7 +5,7 @@ use std::ops::Range;
 use crate::font::{MM_PER_POINT, Weight};
 use crate::mark::{Mark, NOTCH};
 use crate::page::{Ink, Type};
-use crate::sheet::{LEFT, RIGHT, RULE, Sheet, baseline, times, wrap};
+use crate::sheet::{BODY, LEFT, RIGHT, RULE, Sheet, baseline, times, wrap};
 
 const TEXT: Type = Type::new(Weight::Regular, 7.8, Ink::Black);
 const STRONG: Type = Type::new(Weight::Bold, 7.8, Ink::Black);
@@ -16,6 +16,10 @@ const HEAD: Type = Type::new(Weight::Bold, 7.4, Ink::Black);
 const PAD: f32 = 0.75;
 /// Between two columns.
 const GUTTER: f32 = 2.2;
+/// Height of a heading with the space above it.
+const TITLE_ROOM: f32 = 12.0;
+/// Height of a remark of up to three lines.
+const REMARK_ROOM: f32 = 13.0;
 /// Width of a note's lead.
 const LEAD: f32 = 27.0;
 /// How far a note stands in from the edge of its row.
@@ -134,6 +138,9 @@ impl Strip {
 pub(crate) struct Table<'s> {
     sheet: &'s mut Sheet,
     columns: Vec<Column>,
+    /// A heading and a remark, drawn with the first row so that they never stand alone.
+    title: Option<(&'static str, &'static str)>,
+    opened: bool,
     headed: bool,
     /// Nothing but the head stands on this page yet.
     fresh: bool,
@@ -149,17 +156,30 @@ impl<'s> Table<'s> {
                 Column(head, if width > 0.0 { width } else { rest }, side)
             })
             .collect();
-        sheet.canvas.tags.open("Table");
-        Self { sheet, columns, headed: false, fresh: false }
+        Self { sheet, columns, title: None, opened: false, headed: false, fresh: false }
+    }
+
+    /// A table under a heading, with a remark between the two if it is not empty.
+    pub(crate) fn titled(
+        sheet: &'s mut Sheet,
+        title: &'static str,
+        remark: &'static str,
+        columns: &[Column],
+    ) -> Self {
+        Self { title: Some((title, remark)), ..Self::new(sheet, columns) }
     }
 
     pub(crate) fn row(&mut self, row: Row) {
         let strips = self.strips(row);
         let together: f32 = strips.iter().map(Strip::height).sum();
-        let head = if self.headed { 0.0 } else { HEAD.leading() + 2.0 * PAD };
+        let mut head = if self.headed { 0.0 } else { HEAD.leading() + 2.0 * PAD };
+        if let Some((_, remark)) = self.title {
+            head += if remark.is_empty() { TITLE_ROOM } else { TITLE_ROOM + REMARK_ROOM };
+        }
         if self.sheet.room() < together + head && together < 0.6 * Sheet::full_room() {
             self.turn();
         }
+        self.open();
         if !self.headed {
             self.head();
         }
@@ -168,8 +188,27 @@ impl<'s> Table<'s> {
         }
     }
 
+    /// Draws the title before the first row.
+    fn open(&mut self) {
+        if self.opened {
+            return;
+        }
+        self.opened = true;
+        if let Some((title, remark)) = self.title.take() {
+            self.sheet.heading(title);
+            if !remark.is_empty() {
+                self.sheet.paragraph(BODY, remark);
+                self.sheet.gap(1.5);
+            }
+        }
+        self.sheet.canvas.tags.open("Table");
+    }
+
     /// Ends the table with its closing rule.
     pub(crate) fn end(self) {
+        if !self.opened {
+            return;
+        }
         let y = self.sheet.y;
         self.sheet.canvas.tags.close();
         self.sheet.canvas.artifact(|canvas| {

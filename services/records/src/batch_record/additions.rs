@@ -1,28 +1,27 @@
 //! Additions, proposals that were not carried out, and deviations.
 
-use super::front::{join, remark};
+use super::front::join;
 use super::{Addition, BatchRecord, Deviation, Finding, Signature, Verdict};
 use crate::mark::Mark;
 use crate::sheet::Sheet;
 use crate::table::{Cell, Column, Note, Row, Side, Table, Voice};
 
 pub(super) fn draw(sheet: &mut Sheet, record: &BatchRecord) {
-    if !record.additions.is_empty() {
-        sheet.heading("Additions");
-        table(sheet, "Done", &record.additions);
-    }
-    if !record.proposals.is_empty() {
-        sheet.heading("Proposals not carried out");
-        remark(
-            sheet,
-            "Each was assessed and answered as shown; nothing of it went into the batch.",
-        );
-        table(sheet, "Planned for", &record.proposals);
-    }
+    table(sheet, ("Additions", ""), "Done", &record.additions);
+    let title = (
+        "Proposals not carried out",
+        "Each was assessed and answered as shown; nothing of it went into the batch.",
+    );
+    table(sheet, title, "Planned for", &record.proposals);
     deviations(sheet, record);
 }
 
-fn table(sheet: &mut Sheet, when: &'static str, additions: &[Addition]) {
+fn table(
+    sheet: &mut Sheet,
+    title: (&'static str, &'static str),
+    when: &'static str,
+    additions: &[Addition],
+) {
     let columns = [
         Column("n", 9.0, Side::Right),
         Column("Verdict", 17.0, Side::Left),
@@ -32,7 +31,7 @@ fn table(sheet: &mut Sheet, when: &'static str, additions: &[Addition]) {
         Column("Amount", 18.0, Side::Right),
         Column("By", 0.0, Side::Left),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let mut table = Table::titled(sheet, title.0, title.1, &columns);
     for addition in additions {
         table.row(row(addition));
     }
@@ -54,7 +53,7 @@ fn row(addition: &Addition) -> Row {
         row.cells[4] = Cell::from(&*one.lot);
         row.cells[5] = Cell::from(&*one.amount);
     } else {
-        row.cells[5] = Cell::quiet(format!("{} lots", addition.lines.len()));
+        row.cells[3] = Cell::quiet(format!("{} lots, listed below", addition.lines.len()));
     }
     row.marks.push(Mark::Verdict(addition.verdict));
     if !addition.late.is_empty() {
@@ -127,17 +126,13 @@ pub(super) fn signed(signature: &Signature) -> Cell {
 }
 
 fn deviations(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.deviations.is_empty() {
-        return;
-    }
-    sheet.heading("Deviations");
     let columns = [
         Column("Code", 30.0, Side::Left),
         Column("Opened", 34.0, Side::Left),
         Column("By", 52.0, Side::Left),
         Column("Resolved", 0.0, Side::Left),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let mut table = Table::titled(sheet, "Deviations", "", &columns);
     for deviation in &record.deviations {
         table.row(deviation_row(deviation));
     }

@@ -1,9 +1,17 @@
 //! What the record rests on, and what it does not hold: rule sets, ledger head, people, cautions.
 
-use super::front::{nothing, remark};
+use super::front::nothing;
 use super::{Absent, BatchRecord};
 use crate::sheet::Sheet;
 use crate::table::{Cell, Column, Row, Side, Table, Voice};
+
+const CAUTION: &str = "Reminders, not a risk assessment of the site. Local rules override them.";
+const RELIANCE: &str = "This record was drawn from an append-only log. The head below fixes every entry of \
+    that log up to its size. To rely on it, compare the key's fingerprint with one obtained elsewhere: from an \
+    earlier record, a notice, another house.";
+
+/// A name and what it stands for, without a head.
+const PAIR: [Column; 2] = [Column("", 40.0, Side::Left), Column("", 0.0, Side::Left)];
 
 pub(super) fn draw(sheet: &mut Sheet, record: &BatchRecord) {
     rule_sets(sheet, record);
@@ -14,17 +22,13 @@ pub(super) fn draw(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn rule_sets(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.rule_sets.is_empty() {
-        return;
-    }
-    sheet.heading("Rule sets in force");
     let columns = [
         Column("Rule set", 44.0, Side::Left),
         Column("Version", 18.0, Side::Left),
         Column("In force", 40.0, Side::Left),
         Column("Standing here", 0.0, Side::Left),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let mut table = Table::titled(sheet, "Rule sets in force", "", &columns);
     for set in &record.rule_sets {
         let mut row = Row::new([
             Cell::from(&*set.id),
@@ -39,12 +43,7 @@ fn rule_sets(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn cautions(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.cautions.is_empty() {
-        return;
-    }
-    sheet.heading("Cautions that apply");
-    remark(sheet, "Reminders, not a risk assessment of the site. Local rules override them.");
-    let mut table = Table::new(sheet, &[Column("", 40.0, Side::Left), Column("", 0.0, Side::Left)]);
+    let mut table = Table::titled(sheet, "Cautions that apply", CAUTION, &PAIR);
     for caution in &record.cautions {
         table.row(Row::new([
             Cell::strong(&*caution.topic),
@@ -55,12 +54,12 @@ fn cautions(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn people(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.people.is_empty() {
-        return;
-    }
-    sheet.heading("People named in this record");
-    let mut table =
-        Table::new(sheet, &[Column("Name", 70.0, Side::Left), Column("Role", 0.0, Side::Left)]);
+    let mut table = Table::titled(
+        sheet,
+        "People named in this record",
+        "",
+        &[Column("Name", 70.0, Side::Left), Column("Role", 0.0, Side::Left)],
+    );
     for person in &record.people {
         table.row(Row::new([Cell::from(&*person.name), Cell::from(&*person.role)]));
     }
@@ -68,13 +67,6 @@ fn people(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn head(sheet: &mut Sheet, record: &BatchRecord) {
-    sheet.heading("Ledger head");
-    remark(
-        sheet,
-        "This record was drawn from an append-only log. The head below fixes every entry of that log up to its size. \
-         To rely on it, compare the key's fingerprint with one obtained elsewhere: from an earlier record, a notice, \
-         another house.",
-    );
     let head = &record.head;
     let note = head.note.iter().fold(Cell::default(), |cell, line| cell.and(Voice::Plain, line));
     let facts = [
@@ -86,7 +78,7 @@ fn head(sheet: &mut Sheet, record: &BatchRecord) {
         ("Key fingerprint", Cell::from(&*head.key_fingerprint)),
         ("Assessed by engine", Cell::from(&*record.engine)),
     ];
-    let mut table = Table::new(sheet, &[Column("", 40.0, Side::Left), Column("", 0.0, Side::Left)]);
+    let mut table = Table::titled(sheet, "Ledger head", RELIANCE, &PAIR);
     for (name, value) in facts {
         table.row(Row::new([Cell::quiet(name), value]));
     }
@@ -106,12 +98,12 @@ fn absent(sheet: &mut Sheet, record: &BatchRecord) {
             ),
         ));
     }
-    if missing.is_empty() {
-        return;
-    }
-    sheet.heading("Not in this record, and why");
-    let mut table =
-        Table::new(sheet, &[Column("What", 60.0, Side::Left), Column("Why", 0.0, Side::Left)]);
+    let mut table = Table::titled(
+        sheet,
+        "Not in this record, and why",
+        "",
+        &[Column("What", 60.0, Side::Left), Column("Why", 0.0, Side::Left)],
+    );
     for Absent { what, why } in missing {
         table.row(Row::new([Cell::from(what), Cell::from(why)]));
     }

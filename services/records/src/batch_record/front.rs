@@ -5,7 +5,7 @@ use crate::chart;
 use crate::font::Weight;
 use crate::mark::{Mark, NOTCH};
 use crate::page::{Ink, Type};
-use crate::sheet::{BODY, LEFT, RIGHT, Sheet, wrap};
+use crate::sheet::{LEFT, RIGHT, Sheet, wrap};
 use crate::table::{Cell, Column, Row, Side, Table, Voice};
 
 const TITLE: Type = Type::new(Weight::Bold, 20.0, Ink::Black);
@@ -95,7 +95,6 @@ fn materials(sheet: &mut Sheet, record: &BatchRecord) {
     if record.materials.is_empty() {
         return;
     }
-    sheet.heading("Materials and their lots");
     let columns = [
         Column("n", 9.0, Side::Right),
         Column("Material", 44.0, Side::Left),
@@ -105,7 +104,7 @@ fn materials(sheet: &mut Sheet, record: &BatchRecord) {
         Column("Expiry", 17.0, Side::Left),
         Column("Used", 0.0, Side::Right),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let mut table = Table::titled(sheet, "Materials and their lots", "", &columns);
     for lot in &record.materials {
         table.row(Row::new([
             Cell::from(lot.n.to_string()),
@@ -129,10 +128,4 @@ pub(super) fn join(parts: &[&str]) -> String {
 /// A section that has nothing to show, as the record's last section lists it.
 pub(super) fn nothing(what: &str, why: &str) -> Absent {
     Absent { what: what.to_owned(), why: why.to_owned() }
-}
-
-/// A plain remark below a heading.
-pub(super) fn remark(sheet: &mut Sheet, text: &str) {
-    sheet.paragraph(BODY, text);
-    sheet.gap(1.5);
 }

@@ -11,20 +11,16 @@ pub(super) fn draw(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn readings(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.readings.is_empty() {
-        return;
-    }
-    sheet.heading("Readings and laboratory results");
     let columns = [
         Column("n", 9.0, Side::Right),
-        Column("Taken", 29.0, Side::Left),
-        Column("Kind", 24.0, Side::Left),
-        Column("As entered", 23.0, Side::Right),
-        Column("Corrected", 20.0, Side::Right),
-        Column("Method, instrument", 39.0, Side::Left),
+        Column("Taken", 27.0, Side::Left),
+        Column("Kind", 22.0, Side::Left),
+        Column("As entered", 31.0, Side::Right),
+        Column("Corrected", 17.0, Side::Right),
+        Column("Method, instrument", 38.0, Side::Left),
         Column("By", 0.0, Side::Left),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let mut table = Table::titled(sheet, "Readings and laboratory results", "", &columns);
     for reading in &record.readings {
         table.row(row(reading));
     }
@@ -58,10 +54,6 @@ fn row(reading: &Reading) -> Row {
 }
 
 fn account(sheet: &mut Sheet, record: &BatchRecord) {
-    if record.account.is_empty() {
-        return;
-    }
-    sheet.heading("Nitrogen account, mg N per litre of liquid");
     let columns = [
         Column("Time", 29.0, Side::Left),
         Column("What changed it", 61.0, Side::Left),
@@ -70,7 +62,8 @@ fn account(sheet: &mut Sheet, record: &BatchRecord) {
         Column("Supply", 18.0, Side::Right),
         Column("Need", 0.0, Side::Right),
     ];
-    let mut table = Table::new(sheet, &columns);
+    let title = "Nitrogen account, mg N per litre of liquid";
+    let mut table = Table::titled(sheet, title, "", &columns);
     for row in &record.account {
         table.row(Row::new([
             Cell::from(&*row.at),

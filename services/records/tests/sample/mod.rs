@@ -8,7 +8,7 @@ use records::{
 };
 
 /// The record, handed out, in a simulated book.
-pub fn record() -> BatchRecord {
+pub(crate) fn record() -> BatchRecord {
     BatchRecord {
         site: Site {
             name: "Example Works".into(),
@@ -59,6 +59,95 @@ pub fn record() -> BatchRecord {
             why: "drawn up as records of their own; this batch was racked once, from T-12 to T-07"
                 .into(),
         }],
+    }
+}
+
+/// A wash of molasses and cane sugar: a preview, with an addition entered after the fact.
+pub(crate) fn wash() -> BatchRecord {
+    let mut record = BatchRecord { issued: None, entries_n: 31, proposals: Vec::new(), ..record() };
+    record.batch = Batch {
+        code: "EXW-25-A1".into(),
+        product_class: "distilling wash, molasses and cane sugar".into(),
+        claims: "none: crystal sugar in the wash, so no claim of “rum” in the EU".into(),
+        destinations: vec!["US: open".into()],
+        vessel: "F-3 (2,400 L)".into(),
+        volume: "2,000 L at 20 °C".into(),
+        liquid_basis: "2,000 L, all liquid".into(),
+        opened_at: "2025-09-22 10:00".into(),
+        expected_final_gravity: "SG 1.0155 (3.95 °P), from composition".into(),
+        fermentable_sugar: "119.3 g/L from composition, not the 178 g/L that gravity suggests"
+            .into(),
+        demand: "140 mg N/L, the floor; 0.90 × sugar gives 107.4".into(),
+    };
+    record.readings = wash_readings();
+    record.chart = Chart {
+        points: vec![
+            ChartPoint { hours: 0.0, gravity: 1.0685, temperature: Some(28.5) },
+            ChartPoint { hours: 20.0, gravity: 1.0570, temperature: Some(30.8) },
+            ChartPoint { hours: 40.5, gravity: 1.0370, temperature: Some(35.4) },
+            ChartPoint { hours: 106.0, gravity: 1.0155, temperature: Some(29.0) },
+        ],
+        doses: vec![
+            ChartDose { hours: 20.5, label: "DAP 400 g".into(), verdict: Verdict::Clear },
+            ChartDose { hours: 40.7, label: "DAP 300 g".into(), verdict: Verdict::Refer },
+        ],
+        expected_final: Some(1.0155),
+    };
+    record.additions = vec![thrown_in()];
+    record.deviations[0].code = "EXW-D-25-04".into();
+    record.deviations[0].findings = vec![
+        "ammonium after half of the sugar".into(),
+        "supply 31.0 mg N/L over need".into(),
+        "powder into an active ferment".into(),
+    ];
+    record.deviations[0].resolved_at = String::new();
+    record.deviations[0].signature = None;
+    record
+}
+
+fn wash_readings() -> Vec<Reading> {
+    vec![Reading {
+        n: 4,
+        at: "2025-09-22 10:00".into(),
+        kind: "gravity".into(),
+        entered: "1.0665 SG at 27.0 °C".into(),
+        corrected: "1.0685".into(),
+        method: "hydrometer, 20 °C scale; corrected for temperature of the sample".into(),
+        instrument: "HY-1".into(),
+        by: "Ana Example".into(),
+        ..Reading::default()
+    }]
+}
+
+fn thrown_in() -> Addition {
+    Addition {
+        n: 19,
+        at: "2025-09-24 02:40".into(),
+        lines: vec![dose("DP-0412", "diammonium phosphate", "300 g")],
+        preparation: "powder, no slurry".into(),
+        by: "Ana Example".into(),
+        verdict: Verdict::Refer,
+        findings: vec![
+            finding(
+                Verdict::Refer,
+                "0.583 of the sugar is used: late for ammonium.",
+                "common practice",
+                "half of fermentable sugar",
+                "",
+            ),
+            finding(
+                Verdict::Clear,
+                "No legal dose check was made here: no adopted set limits nutrients at this premises.",
+                "",
+                "",
+                "",
+            ),
+        ],
+        already_done: true,
+        late:
+            "entered 2025-09-24 09:05, 6 h 25 min after the act: night shift, cooling pump tripped"
+                .into(),
+        ..Addition::default()
     }
 }
 
@@ -188,18 +277,16 @@ fn chart() -> Chart {
     let points = RUN
         .iter()
         .map(|(day, gravity, temperature)| ChartPoint {
-            hours: f32::from(*day - 9) * 24.0,
+            hours: (f32::from(*day - 9) * 24.0 - 1.0).max(0.0),
             gravity: gravity.parse().expect("a number"),
             temperature: Some(temperature.parse().expect("a number")),
         })
         .collect();
     let doses = [
-        (1.0, "autolysate 900 g", Verdict::Clear),
-        (50.0, "autolysate 900 g", Verdict::Clear),
-        (99.0, "DAP 900 g", Verdict::Clear),
-        (144.5, "DAP 2,100 g", Verdict::Refuse),
-        (145.0, "DAP 210 g", Verdict::Advise),
-        (226.0, "DAP 151 g", Verdict::Refer),
+        (0.0, "rehydrated yeast", Verdict::Clear),
+        (49.0, "autolysate 900 g", Verdict::Clear),
+        (98.0, "DAP 900 g", Verdict::Clear),
+        (225.0, "DAP 151 g", Verdict::Refer),
     ];
     Chart {
         points,
