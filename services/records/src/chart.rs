@@ -7,7 +7,7 @@ use crate::batch_record::{Chart, ChartDose};
 use crate::font::Weight;
 use crate::mark::{Mark, NOTCH};
 use crate::page::{Canvas, Ink, Spot, Type};
-use crate::sheet::{BODY, LEFT, RIGHT, Sheet};
+use crate::sheet::{BODY, LEFT, RIGHT, Sheet, times};
 
 const LABEL: Type = Type::new(Weight::Regular, 6.6, Ink::Grey);
 const DOSE: Type = Type::new(Weight::Regular, 6.6, Ink::Black);
@@ -15,6 +15,8 @@ const TITLE: Type = Type::new(Weight::Bold, 7.2, Ink::Black);
 
 /// Rows for the labels of doses above the chart.
 const LABEL_ROWS: usize = 4;
+/// From one row of labels to the next, in millimetres.
+const ROW: f32 = 3.6;
 
 /// A rectangle of the page on which a range of hours and a range of values are drawn.
 struct Panel {
@@ -50,10 +52,11 @@ impl Panel {
 pub(crate) fn draw(sheet: &mut Sheet, chart: &Chart) {
     let chart = &drawable(chart);
     let has_temperature = chart.points.iter().any(|point| point.temperature.is_some());
-    let height = if has_temperature { 114.0 } else { 86.0 };
-    sheet.need(height);
     let labelled = place_labels(&sheet.canvas, chart);
-    let gravity = gravity_panel(chart, sheet.y + 19.0);
+    let rows = labelled.iter().flatten().max().map_or(0, |row| row + 1);
+    let above = 6.0 + ROW * times(rows);
+    sheet.need(above + if has_temperature { 98.0 } else { 70.0 });
+    let gravity = gravity_panel(chart, sheet.y + above);
     let temperature = has_temperature.then(|| temperature_panel(chart, gravity.bottom() + 7.0));
     let lowest = temperature.as_ref().map_or(gravity.bottom(), Panel::bottom);
 
@@ -81,7 +84,7 @@ pub(crate) fn draw(sheet: &mut Sheet, chart: &Chart) {
     sheet.y = lowest + 7.0;
     let unlabelled = labelled.iter().filter(|row| row.is_none()).count();
     let note = if unlabelled > 0 {
-        format!(" {unlabelled} dose labels found no room; all doses are in the tables below.")
+        format!(" Doses without a label for want of room: {unlabelled}; the tables below hold all.")
     } else {
         String::new()
     };
@@ -230,7 +233,7 @@ fn draw_doses(
 }
 
 fn label_y(panel_top: f32, row: usize) -> f32 {
-    panel_top - 5.4 - 3.6 * crate::sheet::times(row)
+    panel_top - 5.4 - ROW * times(row)
 }
 
 /// For each dose the row of its label, so that no two labels touch; `None` if no row has room.
@@ -243,8 +246,8 @@ fn place_labels(canvas: &Canvas, chart: &Chart) -> Vec<Option<usize>> {
         let start = panel.x(dose.hours) - NOTCH - 1.0;
         let end = panel.x(dose.hours) + 1.0 + canvas.width(&shown, DOSE);
         let row = begins.iter().position(|&taken| end < taken).filter(|_| end <= RIGHT + 1.0)?;
-        begins[row..].iter_mut().for_each(|begin| *begin = begin.min(start));
-        begins[..row].iter_mut().for_each(|begin| *begin = begin.min(panel.x(dose.hours)));
+        begins[row] = start;
+        begins[..row].fill(panel.x(dose.hours));
         Some(row)
     };
     let mut rows: Vec<Option<usize>> = chart.doses.iter().rev().map(&mut place).collect();
@@ -254,7 +257,7 @@ fn place_labels(canvas: &Canvas, chart: &Chart) -> Vec<Option<usize>> {
 
 /// Round values inside a range, at most `most` or so, a step of 1, 2 or 5 times a power of ten.
 fn ticks(low: f32, high: f32, most: usize) -> Vec<f32> {
-    let target = (high - low) / crate::sheet::times(most);
+    let target = (high - low) / times(most);
     let power = 10_f32.powf(target.log10().floor());
     let step = [1.0, 2.0, 5.0, 10.0]
         .into_iter()
@@ -276,7 +279,7 @@ fn hour_ticks(first: f32, last: f32) -> Vec<f32> {
 fn spaced(low: f32, high: f32, step: f32) -> Vec<f32> {
     let first = (low / step).ceil();
     (0..64)
-        .map(|index| (first + crate::sheet::times(index)) * step)
+        .map(|index| (first + times(index)) * step)
         .take_while(|&value| value <= high + step * 0.001)
         .collect()
 }

@@ -60,9 +60,10 @@ fn row(addition: &Addition) -> Row {
         row.marks.push(Mark::Late);
     }
     if addition.lines.len() > 1 {
-        for line in &addition.lines {
-            row.note("Lot", join(&[&line.lot, &line.material, &line.amount]));
-        }
+        let lots = addition.lines.iter().fold(Cell::default(), |cell, line| {
+            cell.and(Voice::Plain, join(&[&line.lot, &line.material, &line.amount]))
+        });
+        row.note("Lots", lots);
     }
     particulars(&mut row, addition);
     for finding in &addition.findings {

@@ -86,7 +86,7 @@ fn chart_section(sheet: &mut Sheet, record: &BatchRecord) {
     if record.chart.points.is_empty() {
         return;
     }
-    sheet.need(132.0);
+    sheet.need(136.0);
     sheet.heading("How it ran");
     chart::draw(sheet, &record.chart);
 }
