@@ -139,12 +139,12 @@ impl TimingLimit {
         if !case.carries(Carries::Nitrogen) {
             return None;
         }
-        let last = case.last_dose_at()?;
+        let last_at = case.last_dose_at()?;
         let least = case.situation.settings.micros(gap.at_least.0)?;
-        if case.proposed.planned_at.0.saturating_sub(last.0) >= least {
+        if case.proposed.planned_at.0.saturating_sub(last_at.0) >= least {
             return None;
         }
-        let hours = fixed(case.proposed.planned_at.hours_since(last), 1);
+        let hours = fixed(case.proposed.planned_at.hours_since(last_at), 1);
         let limit = case.situation.settings.text(gap.at_least.0).to_owned();
         let sentence =
             format!("The last nitrogen went in {hours} h before; the site keeps {limit} h apart.");
