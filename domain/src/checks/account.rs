@@ -42,7 +42,7 @@ impl Balance {
 
     /// What may still go in.
     pub(crate) fn room(&self) -> Option<f64> {
-        self.supply.map(|supply| settled((self.target() - supply).max(0.0)))
+        self.supply.map(|supply| (self.target() - supply).max(0.0))
     }
 
     /// The account as it is written down.

@@ -111,6 +111,13 @@ impl DoseLimit {
         Some(self.rest_parts(&Tally::of(self, case), volume_ul) / PARTS)
     }
 
+    /// Whether the dose stays within the limit.
+    pub(crate) fn keeps(&self, case: &Case<'_>) -> bool {
+        let total = Tally::of(self, case).total();
+        case.strictest_volume_ul()
+            .is_some_and(|volume_ul| self.limit.compare(total, volume_ul) != Ordering::Greater)
+    }
+
     fn rest_parts(&self, tally: &Tally, volume_ul: i64) -> i128 {
         (self.limit.most(volume_ul) - tally.already).max(0)
     }
@@ -137,7 +144,7 @@ impl DoseLimit {
 
     fn too_much(&self, case: &Case<'_>, judged: Judged<'_>) -> String {
         let (dose, limit) = (self.shown_dose(case, judged), self.shown_limit(judged.volume_ul));
-        format!("{} would come to {dose}; the limit is {limit}.", self.name)
+        format!("{} comes to {dose} with this; the limit is {limit}.", self.name)
     }
 
     fn within(&self, case: &Case<'_>, mark: &Mark<'_>, judged: Judged<'_>) -> Finding {

@@ -24,6 +24,9 @@ fn b1_pitching_with_rehydration_product_is_clear() {
     let shortage = found(&answer, "need.shortage");
     assert_eq!(shortage.verdict, Verdict::Clear);
     assert_eq!(shortage.params["shortage_mg_l"], "71.1");
+    // More of the rehydration product would break the limit on thiamine.
+    let cure = &shortage.remedy.as_ref().unwrap().sentence;
+    assert!(cure.contains("1,006 g of diammonium phosphate"), "{cure}");
 }
 
 #[test]
@@ -33,6 +36,8 @@ fn b2_amino_nitrogen_before_ammonium_is_clear() {
         batch.assess(&proposal("2025-09-11T10:00:00-07:00", vec![autolysate("900")]).water(6));
     assert_eq!(worst(&answer), []);
     assert_eq!(supply(&answer), "164.2");
+    let cure = &found(&answer, "need.shortage").remedy.as_ref().unwrap().sentence;
+    assert!(cure.contains("3,737 g more of AU-0208"), "{cure}");
 }
 
 #[test]
@@ -69,7 +74,7 @@ fn b4_the_running_total_over_the_limit_is_refused_and_the_need_is_the_remedy() {
     assert_eq!(lot_amount(dose), "121 g");
     assert_eq!(
         dose.sentence,
-        "Ammonium phosphate would come to 1.000 g/L; the limit is 0.958611 g/L \
+        "Ammonium phosphate comes to 1.000 g/L with this; the limit is 0.958611 g/L \
          (8 lb per 1,000 US gal, 27 CFR 24.246; printed 0.96 g/L)."
     );
     assert_eq!(
@@ -86,7 +91,7 @@ fn b4_done_as_the_remedy_says_has_no_dose_and_no_excess_finding() {
     let answer = batch.assess(&proposal("2025-09-15T09:30:00-07:00", vec![dap("DP-0412", "121")]));
     assert_eq!(worst(&answer), []);
     let one_more =
-        batch.assess(&proposal("2025-09-15T09:30:00-07:00", vec![dap("DP-0412", "122")]));
+        batch.assess(&proposal("2025-09-15T09:30:00-07:00", vec![dap("DP-0412", "123")]));
     assert_eq!(worst(&one_more), [(Verdict::Advise, "common-practice.excess")]);
 }
 
