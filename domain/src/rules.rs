@@ -206,6 +206,15 @@ impl fmt::Display for RuleName<'_> {
 impl RuleSet {
     /// Reads a rule set.
     ///
+    /// ```
+    /// use domain::rules::{RuleSet, shipped};
+    /// let (id, text) = shipped()[0];
+    /// let set = RuleSet::parse(text)?;
+    /// assert_eq!(set.id, id);
+    /// assert_eq!(set.dose_limit[0].limit.text(), "8 lb per 1,000 US gal");
+    /// # Ok::<(), domain::rules::RuleSetError>(())
+    /// ```
+    ///
     /// # Errors
     /// Any [`RuleSetError`].
     pub fn parse(text: &str) -> Result<Self, RuleSetError> {
@@ -279,7 +288,12 @@ fn names(list: &[String], wanted: &str) -> bool {
 
 /// SHA-256 of a rule set's text, hex: the name of exactly this version.
 pub fn digest(text: &str) -> String {
-    Sha256::digest(text.as_bytes()).iter().map(|byte| format!("{byte:02x}")).collect()
+    Sha256::digest(text.as_bytes()).iter().fold(String::new(), |mut hex, byte| {
+        for half in [byte >> 4, byte & 15] {
+            hex.extend(char::from_digit(u32::from(half), 16));
+        }
+        hex
+    })
 }
 
 /// The sets that come with the program: id and text.

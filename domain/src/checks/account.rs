@@ -42,7 +42,7 @@ impl Balance {
 
     /// What may still go in.
     pub(crate) fn room(&self) -> Option<f64> {
-        self.supply.map(|supply| settled((self.target() - supply).max(0.0)))
+        self.supply.map(|supply| (self.target() - supply).max(0.0))
     }
 
     /// The account as it is written down.
@@ -76,7 +76,7 @@ fn need(factor_mg_g: f64, sugar_g_l: f64) -> f64 {
 /// Bisson & Butzke 2000: 21, 23, 25, 27 Brix need 200, 250, 300, 350 mg N/L; the line through them, inside that range.
 fn line(situation: &Situation<'_>) -> Option<f64> {
     let brix = situation.original_brix.filter(|brix| (21.0..=27.0).contains(brix))?;
-    (situation.product_class == MUST).then(|| 200.0 + 25.0 * (brix - 21.0))
+    (situation.product_class == MUST).then_some(200.0 + 25.0 * (brix - 21.0))
 }
 
 /// Additions that the sample cannot have seen: those made when it was taken, or later.

@@ -11,6 +11,7 @@ use super::situation::{AdoptedSet, Line, Standing};
 pub(crate) fn unknowns(case: &Case<'_>) -> Vec<Finding> {
     let mut findings: Vec<Finding> = coverage(case).into_iter().collect();
     if case.feeds() {
+        findings.extend(volume_missing(case));
         findings.extend(yan_missing(case));
         findings.extend(nitrogen_unknown(case));
         findings.extend(earlier_unknown(case));
@@ -22,7 +23,7 @@ pub(crate) fn unknowns(case: &Case<'_>) -> Vec<Finding> {
 
 /// Where no law was held against the dose, the answer says so.
 fn coverage(case: &Case<'_>) -> Option<Finding> {
-    let covers = |adopted: &&AdoptedSet| {
+    let covers = |adopted: &AdoptedSet| {
         adopted.standing == Standing::Production
             && adopted.set.dose_limit.iter().any(|rule| {
                 rule.source.on
@@ -30,7 +31,7 @@ fn coverage(case: &Case<'_>) -> Option<Finding> {
                     && rule.counts == Counts::Substance
             })
     };
-    if case.binding.iter().any(|adopted| covers(adopted)) {
+    if case.binding.iter().copied().any(covers) {
         return None;
     }
     let sentence = format!(
@@ -43,6 +44,16 @@ fn coverage(case: &Case<'_>) -> Option<Finding> {
 
 fn advise(rule: &str, sentence: String, remedy: &str) -> Finding {
     Finding::new(rule, Verdict::Advise, Basis::CommonPractice, sentence).cured_by(remedy)
+}
+
+fn volume_missing(case: &Case<'_>) -> Option<Finding> {
+    case.volume_ul().is_none().then(|| {
+        advise(
+            "measure.volume-missing",
+            "No liquid volume is known: nothing per litre could be judged.".to_owned(),
+            "Record the fill first.",
+        )
+    })
 }
 
 fn yan_missing(case: &Case<'_>) -> Option<Finding> {

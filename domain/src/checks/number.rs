@@ -12,6 +12,15 @@ pub(crate) fn percent(fraction: f64) -> String {
     fixed(fraction * 100.0, 0)
 }
 
+/// A probability in whole per cent, never "0" and never "100".
+pub(crate) fn chance(probability: f64) -> String {
+    match probability {
+        p if p > 0.99 => "over 99".to_owned(),
+        p if p < 0.01 => "under 1".to_owned(),
+        p => percent(p),
+    }
+}
+
 /// The nearest double of a sum of base units.
 pub(crate) fn real(sum: i128) -> f64 {
     #[expect(clippy::cast_precision_loss, reason = "53 bits are enough for a derived figure")]
@@ -29,7 +38,7 @@ pub(crate) fn whole(value: f64, most: i64) -> i64 {
     cut.clamp(0, most.max(0))
 }
 
-/// Rounds to the microgram per litre, so that noise of the last bit decides nothing.
+/// Rounds a level to the tenth of a milligram per litre that is shown: what is decided is what can be read.
 pub(crate) fn settled(mg_l: f64) -> f64 {
-    (mg_l * 1_000.0).round() / 1_000.0
+    (mg_l * 10.0).round() / 10.0
 }

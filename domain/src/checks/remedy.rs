@@ -47,6 +47,11 @@ impl Cap {
         })
     }
 
+    /// Whether a line of one is a line of the other.
+    fn touches(&self, other: &Self) -> bool {
+        self.lines.iter().any(|line| other.lines.contains(line))
+    }
+
     /// How much of `mass_ug` the cap leaves, rounded down.
     fn leaves(&self, mass_ug: i64) -> i64 {
         if self.rest >= self.proposed {
@@ -65,9 +70,8 @@ pub(crate) fn attach(case: &Case<'_>, noticed: &mut [Noticed]) {
     for one in noticed {
         let Some(cap) = &one.cap else { continue };
         let mass_ug = mass_of(case, &cap.lines);
-        let Some(tightest) = caps.iter().min_by_key(|other| other.leaves(mass_ug)) else {
-            continue;
-        };
+        let touching = caps.iter().filter(|other| other.touches(cap));
+        let Some(tightest) = touching.min_by_key(|other| other.leaves(mass_ug)) else { continue };
         let grams = shown_grams(tightest.leaves(mass_ug));
         let own = shown_grams(cap.leaves(mass_ug));
         if let Ground::Dose { citation } = &cap.ground {

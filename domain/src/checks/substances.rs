@@ -28,17 +28,17 @@ const MEASURES: [&str; 4] = ["amino_nitrogen", "ammonium_nitrogen", "phosphorus"
 pub(crate) const PER_MICROGRAM: i128 = 1_000_000_000_000_000;
 
 impl Line {
-    /// The names a positive list is asked about: those the material is listed as, and the substances in it that carry
-    /// a name of their own and are not among them.
+    /// The names a positive list is asked about: those the material is listed as and the nitrogen salts in it, or, if
+    /// it is listed as nothing, the substances in it.
     pub(crate) fn names(&self) -> impl Iterator<Item = String> {
+        let salt = |name: &str| NITROGEN.iter().any(|(known, ..)| *known == name);
+        let stated = self.composition.iter().filter(|(_, parts)| **parts > 0);
+        let materials = stated
+            .map(|(name, _)| plain(name))
+            .filter(|name| !MEASURES.contains(&name.as_str()))
+            .filter(|name| self.listed_as.is_empty() || salt(name));
         let mut names: Vec<String> = self.listed_as.iter().map(|name| plain(name)).collect();
-        if names.is_empty() {
-            let stated = self.composition.iter().filter(|(_, parts)| **parts > 0);
-            let materials = stated.filter(|(name, _)| !MEASURES.contains(&name.as_str()));
-            names.extend(materials.map(|(name, _)| plain(name)));
-        } else if self.composition.get("urea").is_some_and(|parts| *parts > 0) {
-            names.push("urea".to_owned());
-        }
+        names.extend(materials);
         names.sort();
         names.dedup();
         names.into_iter()

@@ -3,18 +3,21 @@
 //! The dose is the sum over every lot that carries the substance, earlier additions and the proposal together, on the
 //! liquid volume: present fill and planned fill both, and the stricter decides. The comparison is exact.
 
+mod tally;
+
 use std::cmp::Ordering;
 
 use serde::Deserialize;
 
 use crate::checks::case::{Case, Mark, Noticed};
 use crate::checks::remedy::{Cap, Ground};
-use crate::checks::situation::Line;
 use crate::checks::{Finding, Verdict};
 use crate::units::Dimension;
 
 use super::Source;
 use super::exact::{PARTS, Ratio, concentration, grouped};
+
+use self::tally::Tally;
 
 /// What is summed.
 #[derive(Clone, Copy, Debug, Default, Deserialize, Eq, PartialEq)]
@@ -60,39 +63,24 @@ const fn refuse() -> Verdict {
     Verdict::Refuse
 }
 
-/// How much of a line is the substance.
-#[derive(Clone, Copy, Debug, Eq, PartialEq)]
-enum Share {
-    /// None of it, as far as is known.
-    None,
-    /// So many base units × [`PARTS`].
-    Parts(i128),
-    /// Listed as the substance, without a stated content: counted whole.
-    Whole(i128),
-    /// It carries the substance, but was measured by volume.
-    NotWeighed,
+/// A tally held against the limit in the smaller of the known fills.
+#[derive(Clone, Copy, Debug)]
+struct Judged<'a> {
+    tally: &'a Tally,
+    volume_ul: i64,
+    over: bool,
 }
 
-/// The dose so far and with the proposal, base units × [`PARTS`].
-#[derive(Clone, Debug, Default)]
-struct Tally {
-    already: i128,
-    proposed: i128,
-    lines: Vec<usize>,
-    whole: bool,
-    not_weighed: Option<String>,
-    not_weighed_earlier: bool,
-}
-
-impl Tally {
-    const fn total(&self) -> i128 {
-        self.already + self.proposed
+impl Judged<'_> {
+    /// The dose in mg/L (or mL/L) in some fill.
+    fn dose_in(&self, volume_ul: i64) -> String {
+        concentration(self.tally.total(), volume_ul, self.over).unwrap_or_default()
     }
 }
 
 impl DoseLimit {
     pub(crate) fn check(&self, case: &Case<'_>, mark: &Mark<'_>) -> Vec<Noticed> {
-        let tally = self.tally(case);
+        let tally = Tally::of(self, case);
         let mut noticed = Vec::new();
         if let Some(lot) = &tally.not_weighed {
             noticed.push(self.not_weighed(mark, lot).into());
@@ -107,209 +95,139 @@ impl DoseLimit {
             noticed.push(self.no_volume(mark).into());
             return noticed;
         };
-        if self.limit.compare(tally.total(), volume_ul) == Ordering::Greater {
-            noticed.push(self.over(case, mark, &tally, volume_ul));
-        } else {
-            noticed.push(self.within(case, mark, &tally, volume_ul).into());
-        }
+        let over = self.limit.compare(tally.total(), volume_ul) == Ordering::Greater;
+        let judged = Judged { tally: &tally, volume_ul, over };
+        noticed.push(match (over, self.counts) {
+            (false, _) => self.within(case, mark, judged).into(),
+            (true, Counts::Substance) => self.over(case, mark, judged),
+            (true, Counts::CarrierWater) => self.too_much_water(case, mark, judged).into(),
+        });
         noticed
     }
 
     /// What of the substance may still go in at the present and the planned fill, base units; `None` without a volume.
     pub(crate) fn rest(&self, case: &Case<'_>) -> Option<i128> {
-        let already = self.tally(case).already;
         let volume_ul = case.strictest_volume_ul()?;
-        Some((self.limit.most(volume_ul) - already).max(0) / PARTS)
+        Some(self.rest_parts(&Tally::of(self, case), volume_ul) / PARTS)
     }
 
-    fn tally(&self, case: &Case<'_>) -> Tally {
-        if self.counts == Counts::CarrierWater {
-            return Tally {
-                already: PARTS * case.earlier_water_ul(),
-                proposed: PARTS * i128::from(case.proposed.carrier_water_ul.max(0)),
-                ..Tally::default()
-            };
-        }
-        let mut tally = Tally::default();
-        for line in case.earlier_lines() {
-            match self.share(line) {
-                Share::None => {}
-                Share::Parts(parts) | Share::Whole(parts) => tally.already += parts,
-                Share::NotWeighed => tally.not_weighed_earlier = true,
-            }
-        }
-        for (index, line) in case.proposed_lines().enumerate() {
-            let share = self.share(line);
-            match share {
-                Share::None => {}
-                Share::Parts(parts) | Share::Whole(parts) => {
-                    tally.proposed += parts;
-                    tally.lines.push(index);
-                    tally.whole |= matches!(share, Share::Whole(_));
-                }
-                Share::NotWeighed => tally.not_weighed = Some(line.lot_code.clone()),
-            }
-        }
-        tally
+    /// Whether the dose stays within the limit.
+    pub(crate) fn keeps(&self, case: &Case<'_>) -> bool {
+        let total = Tally::of(self, case).total();
+        case.strictest_volume_ul()
+            .is_some_and(|volume_ul| self.limit.compare(total, volume_ul) != Ordering::Greater)
     }
 
-    fn share(&self, line: &Line) -> Share {
-        let stated: Option<i64> = self
-            .substances
-            .iter()
-            .filter_map(|name| line.composition.get(name))
-            .copied()
-            .reduce(i64::saturating_add);
-        let listed = || line.names().any(|name| self.substances.contains(&name));
-        let (parts, whole) = match stated {
-            Some(0) => return Share::None,
-            Some(parts) => (i128::from(parts), false),
-            None if listed() => (PARTS, true),
-            None => return Share::None,
-        };
-        match line.amount.dimension() {
-            Ok(Dimension::Mass) => {
-                let total = i128::from(line.amount.base()) * parts;
-                if whole { Share::Whole(total) } else { Share::Parts(total) }
-            }
-            _ => Share::NotWeighed,
-        }
+    fn rest_parts(&self, tally: &Tally, volume_ul: i64) -> i128 {
+        (self.limit.most(volume_ul) - tally.already).max(0)
     }
 
-    fn over(&self, case: &Case<'_>, mark: &Mark<'_>, tally: &Tally, volume_ul: i64) -> Noticed {
-        let rest = (self.limit.most(volume_ul) - tally.already).max(0);
-        let dose = self.shown_dose(case, tally, volume_ul, true);
-        let sentence = format!(
-            "{} would come to {dose}; the limit is {} ({}, {}).",
-            self.name,
-            self.shown_limit(case, volume_ul),
-            self.limit.text(),
-            self.source.citation,
-        );
-        let mut finding = self.measured(case, mark, self.breach, sentence, tally, volume_ul, true);
-        if self.counts == Counts::CarrierWater {
-            let rest_l = litres(rest / PARTS);
-            finding = finding.param("rest_l", rest_l.clone()).cured_by(format!(
-                "Use at most {rest_l} L of water, or stir it up in the liquid itself."
-            ));
-            return finding.into();
-        }
+    fn over(&self, case: &Case<'_>, mark: &Mark<'_>, judged: Judged<'_>) -> Noticed {
         let cap = Cap {
-            lines: tally.lines.clone(),
-            rest,
-            proposed: tally.proposed,
+            lines: judged.tally.lines.clone(),
+            rest: self.rest_parts(judged.tally, judged.volume_ul),
+            proposed: judged.tally.proposed,
             ground: Ground::Dose { citation: self.source.citation.clone() },
         };
+        let finding = self.measured(case, mark, self.breach, &self.too_much(case, judged), judged);
         Noticed { finding, cap: Some(cap) }
     }
 
-    fn within(&self, case: &Case<'_>, mark: &Mark<'_>, tally: &Tally, volume_ul: i64) -> Finding {
-        let sentence = format!(
-            "{}: {} of at most {} ({}, {}).",
-            self.name,
-            self.shown_dose(case, tally, volume_ul, false),
-            self.shown_limit(case, volume_ul),
-            self.limit.text(),
-            self.source.citation,
-        );
-        self.measured(case, mark, Verdict::Clear, sentence, tally, volume_ul, false)
+    fn too_much_water(&self, case: &Case<'_>, mark: &Mark<'_>, judged: Judged<'_>) -> Finding {
+        let rest_l = litres(self.rest_parts(judged.tally, judged.volume_ul) / PARTS);
+        let remedy =
+            format!("Use at most {rest_l} L of water, or stir it up in the batch's own liquid.");
+        self.measured(case, mark, self.breach, &self.too_much(case, judged), judged)
+            .param("rest_l", rest_l)
+            .cured_by(remedy)
     }
 
-    #[expect(clippy::too_many_arguments, reason = "what a dose finding is made of, in one place")]
+    fn too_much(&self, case: &Case<'_>, judged: Judged<'_>) -> String {
+        let (dose, limit) = (self.shown_dose(case, judged), self.shown_limit(judged.volume_ul));
+        format!("{} comes to {dose} with this; the limit is {limit}.", self.name)
+    }
+
+    fn within(&self, case: &Case<'_>, mark: &Mark<'_>, judged: Judged<'_>) -> Finding {
+        let (dose, limit) = (self.shown_dose(case, judged), self.shown_limit(judged.volume_ul));
+        let sentence = format!("{}: {dose} of at most {limit}.", self.name);
+        self.measured(case, mark, Verdict::Clear, &sentence, judged)
+    }
+
+    /// A finding with the dose in each fill beside the limit.
     fn measured(
         &self,
         case: &Case<'_>,
         mark: &Mark<'_>,
         verdict: Verdict,
-        mut sentence: String,
-        tally: &Tally,
-        volume_ul: i64,
-        over: bool,
+        sentence: &str,
+        judged: Judged<'_>,
     ) -> Finding {
-        if tally.whole {
-            sentence.push_str(" The content is not stated, so the whole lot was counted.");
-        }
-        if let Some(note) = &self.note {
-            sentence.push(' ');
-            sentence.push_str(note);
-        }
-        let unit = self.unit();
-        let value = concentration(tally.total(), volume_ul, over).unwrap_or_default();
-        let mut finding = mark
+        let whole =
+            judged.tally.whole.then_some("The content is not stated, so all of it was counted.");
+        let parts = [Some(sentence), whole, self.note.as_deref()];
+        let sentence = parts.into_iter().flatten().collect::<Vec<_>>().join(" ");
+        let (unit, suffix) = match self.limit.measure() {
+            Dimension::Volume => ("mL/L", "ml_l"),
+            _ => ("mg/L", "mg_l"),
+        };
+        let already = concentration(judged.tally.already, judged.volume_ul, false);
+        let finding = mark
             .finding(&self.id, &self.source, verdict, sentence)
-            .measured(value, self.limit.per_thousand(), unit)
-            .param("volume_l", litres(i128::from(volume_ul)));
-        let suffix = if unit == "mg/L" { "mg_l" } else { "ml_l" };
-        for (name, volume) in case.volumes() {
-            let over = self.limit.compare(tally.total(), volume) == Ordering::Greater;
-            if let Some(value) = concentration(tally.total(), volume, over) {
-                finding = finding.param(&format!("dose_{name}_{suffix}"), value);
-            }
-        }
-        if let Some(value) = concentration(tally.already, volume_ul, false) {
-            finding = finding.param(&format!("already_{suffix}"), value);
-        }
-        finding
+            .measured(judged.dose_in(judged.volume_ul), self.limit.per_thousand(), unit)
+            .param("volume_l", litres(i128::from(judged.volume_ul)))
+            .param(&format!("already_{suffix}"), already.unwrap_or_default());
+        case.volumes().into_iter().fold(finding, |finding, (fill, volume_ul)| {
+            finding.param(&format!("dose_{fill}_{suffix}"), judged.dose_in(volume_ul))
+        })
     }
 
     fn not_weighed(&self, mark: &Mark<'_>, lot: &str) -> Finding {
+        let (substance, citation) = (self.name.to_lowercase(), self.source.shown());
         let sentence = format!(
-            "{lot} carries {}, but was given by volume: its dose cannot be held against {}.",
-            self.name.to_lowercase(),
-            self.source.citation,
+            "{lot} carries {substance}, but is given by volume: its dose cannot be held against {citation}."
         );
         mark.finding(&self.id, &self.source, self.breach, sentence)
             .cured_by("Weigh it and propose it by mass.")
     }
 
     fn earlier_not_weighed(&self, mark: &Mark<'_>) -> Finding {
+        let substance = self.name.to_lowercase();
         let sentence = format!(
-            "An earlier addition carried {}, given by volume: the sum here leaves it out.",
-            self.name.to_lowercase(),
+            "An earlier addition carried {substance}, given by volume: the sum here leaves it out."
         );
         mark.finding(&self.id, &self.source, self.breach.min(Verdict::Advise), sentence)
             .cured_by("Amend the earlier addition with its mass.")
     }
 
     fn no_volume(&self, mark: &Mark<'_>) -> Finding {
-        let sentence = format!(
-            "No liquid volume is known, so {} cannot be held against {}.",
-            self.name.to_lowercase(),
-            self.source.citation,
-        );
+        let (substance, citation) = (self.name.to_lowercase(), self.source.shown());
+        let sentence =
+            format!("No liquid volume is known, so {substance} cannot be held against {citation}.");
         mark.finding(&self.id, &self.source, self.breach, sentence)
             .cured_by("Record the fill first.")
     }
 
-    fn unit(&self) -> &'static str {
-        match self.limit.measure() {
-            Dimension::Volume => "mL/L",
-            _ => "mg/L",
+    /// `1.000 g/L`, with the other fill beside it where there is one.
+    fn shown_dose(&self, case: &Case<'_>, judged: Judged<'_>) -> String {
+        if self.counts == Counts::CarrierWater {
+            return format!("{} L", litres(judged.tally.total() / PARTS));
         }
+        let dose = spoken(&judged.dose_in(judged.volume_ul));
+        let other = case.volumes().into_iter().find(|(_, volume)| *volume != judged.volume_ul);
+        other.map_or(dose.clone(), |(fill, volume_ul)| {
+            format!("{dose} ({} at the {fill} fill)", spoken(&judged.dose_in(volume_ul)))
+        })
     }
 
-    /// `1.0000 g/L`, with the planned fill beside it where there is one.
-    fn shown_dose(&self, case: &Case<'_>, tally: &Tally, volume_ul: i64, over: bool) -> String {
-        if self.counts == Counts::CarrierWater {
-            return format!("{} L", litres(tally.total() / PARTS));
-        }
-        let mut text = spoken(&concentration(tally.total(), volume_ul, over).unwrap_or_default());
-        for (name, volume) in case.volumes() {
-            if volume != volume_ul
-                && let Some(value) = concentration(tally.total(), volume, over)
-            {
-                text.push_str(&format!(" ({} at the {name} fill)", spoken(&value)));
-            }
-        }
-        text
-    }
-
-    fn shown_limit(&self, case: &Case<'_>, volume_ul: i64) -> String {
-        debug_assert!(case.volumes().iter().any(|(_, volume)| *volume == volume_ul));
-        if self.counts == Counts::CarrierWater {
-            return format!("{} L", litres(self.limit.most(volume_ul) / PARTS));
-        }
-        spoken(&self.limit.per_thousand())
+    /// `0.958611 g/L (8 lb per 1,000 US gal, 27 CFR 24.246; printed 0.96 g/L)`.
+    fn shown_limit(&self, volume_ul: i64) -> String {
+        let limit = match self.counts {
+            Counts::CarrierWater => format!("{} L", litres(self.limit.most(volume_ul) / PARTS)),
+            Counts::Substance => spoken(&self.limit.per_thousand()),
+        };
+        let printed = self.printed.as_deref().map(|text| format!("; printed {text}"));
+        let (as_written, citation) = (self.limit.text(), self.source.shown());
+        format!("{limit} ({as_written}, {citation}{})", printed.unwrap_or_default())
     }
 }
 
@@ -319,13 +237,14 @@ fn litres(volume_ul: i128) -> String {
     format!("{}.{}", tenths / 10, tenths % 10)
 }
 
-/// `958.611` mg/L as `0.958611 g/L`; small ones stay in mg/L.
+/// `958.611` mg/L as `0.958611 g/L` and `300.000` as `0.300 g/L`; small ones stay in mg/L.
 fn spoken(mg_l: &str) -> String {
     let Some((whole, fraction)) = mg_l.split_once('.') else { return format!("{mg_l} mg/L") };
     if whole.len() < 3 {
         return format!("{mg_l} mg/L");
     }
-    let (grams, rest) = whole.split_at(whole.len() - 3);
+    let (grams, milligrams) = whole.split_at(whole.len() - 3);
     let grams = if grams.is_empty() { "0" } else { grams };
-    format!("{}.{rest}{fraction} g/L", grouped(grams))
+    let fraction = fraction.trim_end_matches('0');
+    format!("{}.{milligrams}{fraction} g/L", grouped(grams))
 }

@@ -3,7 +3,7 @@
 use serde::Deserialize;
 
 use crate::checks::case::{Case, Mark, Noticed};
-use crate::checks::number::fixed;
+use crate::checks::number::{fixed, settled};
 use crate::checks::remedy::Cap;
 use crate::checks::{Finding, Verdict};
 use crate::settings::{Setting, Settings};
@@ -98,7 +98,7 @@ impl LevelBand {
         let level = match self.level {
             Level::Excess if !case.adds_nitrogen() => None,
             Level::Excess => case.after.excess(),
-            Level::Supply => case.after.supply,
+            Level::Supply => case.after.supply.map(settled),
         };
         let Some(level) = level else { return Vec::new() };
         let settings = case.situation.settings;
@@ -118,7 +118,7 @@ impl LevelBand {
         let supply = fixed(case.after.supply.unwrap_or_default(), 1);
         let target = fixed(case.after.target(), 1);
         let sentence = format!(
-            "Supply would come to {supply} mg N/L, {} over the {target} that this batch needs.",
+            "Supply comes to {supply} mg N/L with this, {} over the {target} that this batch needs.",
             fixed(level, 1)
         );
         let mut finding = mark
@@ -145,7 +145,7 @@ impl LevelBand {
             .to_owned();
         let supply = fixed(level, 1);
         let sentence = format!(
-            "Supply would be only {supply} mg N/L: below {limit} expect the ferment to stick."
+            "Supply is only {supply} mg N/L with this: below {limit} expect the ferment to stick."
         );
         mark.finding(&self.id, &self.source, verdict, sentence)
             .param("supply_mg_l", supply.clone())

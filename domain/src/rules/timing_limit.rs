@@ -5,7 +5,7 @@
 use serde::Deserialize;
 
 use crate::checks::case::{Case, Mark, Noticed};
-use crate::checks::number::{fixed, percent};
+use crate::checks::number::{chance, fixed, percent};
 use crate::checks::{Finding, Verdict};
 
 use super::dose_limit::Counts;
@@ -44,6 +44,8 @@ pub struct Step {
     pub carries: Carries,
     /// What follows.
     pub verdict: Verdict,
+    /// What to do instead.
+    pub remedy: String,
 }
 
 /// The least time since the last dose of nitrogen.
@@ -54,6 +56,8 @@ pub struct Gap {
     pub at_least: SettingName,
     /// What follows if it is shorter.
     pub verdict: Verdict,
+    /// What to do instead.
+    pub remedy: String,
 }
 
 /// When yeast is fed: by the sugar used, or by the time since the last dose.
@@ -68,8 +72,6 @@ pub struct TimingLimit {
     /// The gap between two doses.
     #[serde(default)]
     pub since_last_dose: Option<Gap>,
-    /// What to do instead.
-    pub remedy: String,
     /// Where it comes from.
     pub source: Source,
 }
@@ -97,11 +99,11 @@ impl TimingLimit {
         };
         let threshold = case.situation.settings.text(step.probability.0);
         let sentence = format!(
-            "About {} % of the sugar will be used by then ({} to {} %); the chance that it is more than {part} is {} %.",
+            "About {} % of the sugar is used at that time ({} to {} %); the chance that it is more than {part} is {} %.",
             percent(fraction.mid),
             percent(fraction.low),
             percent(fraction.high),
-            percent(probability(step)),
+            chance(probability(step)),
         );
         let finding = mark
             .finding(&self.id, &self.source, step.verdict, sentence)
@@ -111,25 +113,25 @@ impl TimingLimit {
             .param("fraction_high", fixed(fraction.high, 3))
             .param("probability", fixed(probability(step), 3))
             .param("probability_threshold", threshold);
-        Some(finding.cured_by(self.instead(case, step)))
+        Some(finding.cured_by(Self::instead(case, step)))
     }
 
     /// Late nitrogen has an alternative that carries none, as far as the law leaves room for it.
-    fn instead(&self, case: &Case<'_>, step: &Step) -> String {
+    fn instead(case: &Case<'_>, step: &Step) -> String {
         let walls = "yeast_cell_walls".to_owned();
         if step.more_than != SugarMark::Half {
-            return self.remedy.clone();
+            return step.remedy.clone();
         }
         let law = case.binding.iter().flat_map(|adopted| &adopted.set.dose_limit).find(|rule| {
             rule.source.on && rule.counts == Counts::Substance && rule.substances.contains(&walls)
         });
         let Some((rule, rest)) = law.and_then(|rule| Some((rule, rule.rest(case)?))) else {
-            return self.remedy.clone();
+            return step.remedy.clone();
         };
         let grams = grouped(&(rest / 1_000_000).to_string());
         format!(
             "{} Yeast cell walls carry no ammonium: up to {grams} g may go in here ({}, {}).",
-            self.remedy,
+            step.remedy,
             rule.limit.text(),
             rule.source.citation
         )
@@ -139,12 +141,12 @@ impl TimingLimit {
         if !case.carries(Carries::Nitrogen) {
             return None;
         }
-        let last = case.last_dose_at()?;
+        let last_at = case.last_dose_at()?;
         let least = case.situation.settings.micros(gap.at_least.0)?;
-        if case.proposed.planned_at.0.saturating_sub(last.0) >= least {
+        if case.proposed.planned_at.0.saturating_sub(last_at.0) >= least {
             return None;
         }
-        let hours = fixed(case.proposed.planned_at.hours_since(last), 1);
+        let hours = fixed(case.proposed.planned_at.hours_since(last_at), 1);
         let limit = case.situation.settings.text(gap.at_least.0).to_owned();
         let sentence =
             format!("The last nitrogen went in {hours} h before; the site keeps {limit} h apart.");
@@ -152,6 +154,6 @@ impl TimingLimit {
             .finding(&self.id, &self.source, gap.verdict, sentence)
             .param("hours_since_last_dose", hours.clone())
             .measured(hours, limit, "h");
-        Some(finding.cured_by(self.remedy.clone()))
+        Some(finding.cured_by(gap.remedy.as_str()))
     }
 }
