@@ -1,0 +1,5 @@
+//! Compiles the program again when a migration was added.
+
+fn main() {
+    println!("cargo:rerun-if-changed=../../migrations");
+}

@@ -1,0 +1,230 @@
+//! One database on either engine: two native pools behind an enum, one SQL text for both.
+
+use std::fmt;
+use std::path::{Path, PathBuf};
+use std::str::FromStr;
+use std::time::Duration;
+
+use sqlx::pool::PoolConnection;
+use sqlx::postgres::{PgConnectOptions, PgPoolOptions};
+use sqlx::sqlite::{SqliteConnectOptions, SqliteJournalMode, SqlitePoolOptions, SqliteSynchronous};
+use sqlx::{PgConnection, PgPool, Postgres, Sqlite, SqliteConnection, SqlitePool, Transaction};
+
+use crate::StoreError;
+
+/// How many statement texts a connection keeps prepared: one per table and power of two.
+const STATEMENTS: usize = 512;
+
+/// How long one waits for a free connection before the answer is "try later".
+const PATIENCE: Duration = Duration::from_secs(5);
+
+/// The file of a book on SQLite within its data directory.
+const FILE: &str = "book.db";
+
+/// Where a book is kept.
+#[derive(Clone, Debug, Eq, PartialEq)]
+pub enum Place {
+    /// A file in this directory.
+    Directory(PathBuf),
+    /// A PostgreSQL server, by address.
+    Url(String),
+}
+
+/// An open database.
+#[derive(Clone, Debug)]
+pub enum Db {
+    /// A file has one writer and many readers.
+    Sqlite {
+        /// The single writing connection.
+        write: SqlitePool,
+        /// Connections that cannot write.
+        read: SqlitePool,
+    },
+    /// A server.
+    Postgres(PgPool),
+}
+
+/// A connection held for a while.
+#[derive(Debug)]
+pub enum Held {
+    /// Of a file.
+    Sqlite(PoolConnection<Sqlite>),
+    /// Of a server.
+    Postgres(PoolConnection<Postgres>),
+}
+
+/// A writing transaction; dropped without [`Tx::commit`] it is rolled back.
+pub enum Tx {
+    /// Of a file.
+    Sqlite(Transaction<'static, Sqlite>),
+    /// Of a server.
+    Postgres(Transaction<'static, Postgres>),
+}
+
+impl fmt::Debug for Tx {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str("Tx")
+    }
+}
+
+/// What statements run on: a held connection or a transaction.
+#[derive(Debug)]
+pub enum Conn<'a> {
+    /// Of a file.
+    Sqlite(&'a mut SqliteConnection),
+    /// Of a server.
+    Postgres(&'a mut PgConnection),
+}
+
+/// Runs one expression on whichever connection it is; the body is compiled once per engine.
+macro_rules! on {
+    ($conn:expr, |$c:ident| $body:expr) => {
+        match $conn {
+            $crate::db::Conn::Sqlite(c) => {
+                let $c = &mut **c;
+                $body
+            }
+            $crate::db::Conn::Postgres(c) => {
+                let $c = &mut **c;
+                $body
+            }
+        }
+    };
+}
+pub(crate) use on;
+
+impl Db {
+    /// Opens a database without touching its tables; a missing file is made.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`].
+    pub async fn open(place: &Place) -> Result<Self, StoreError> {
+        match place {
+            Place::Directory(directory) => open_file(&directory.join(FILE)).await,
+            Place::Url(url) => open_server(url).await,
+        }
+    }
+
+    /// A connection for reading.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`] if none becomes free in time.
+    pub async fn reader(&self) -> Result<Held, StoreError> {
+        Ok(match self {
+            Self::Sqlite { read, .. } => Held::Sqlite(read.acquire().await?),
+            Self::Postgres(pool) => Held::Postgres(pool.acquire().await?),
+        })
+    }
+
+    /// A transaction that may write.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`].
+    pub async fn begin(&self) -> Result<Tx, StoreError> {
+        Ok(match self {
+            Self::Sqlite { write, .. } => Tx::Sqlite(write.begin_with("begin immediate").await?),
+            Self::Postgres(pool) => Tx::Postgres(pool.begin().await?),
+        })
+    }
+
+    /// A transaction that only reads, and sees the book as it is now however long it takes.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`].
+    pub async fn snapshot(&self) -> Result<Tx, StoreError> {
+        const STILL: &str = "begin isolation level repeatable read, read only";
+        Ok(match self {
+            Self::Sqlite { read, .. } => Tx::Sqlite(read.begin().await?),
+            Self::Postgres(pool) => Tx::Postgres(pool.begin_with(STILL).await?),
+        })
+    }
+
+    /// Whether all sites share one writer.
+    pub const fn has_one_writer(&self) -> bool {
+        matches!(self, Self::Sqlite { .. })
+    }
+
+    /// The engine's name, for logs and the about page.
+    pub const fn engine(&self) -> &'static str {
+        match self {
+            Self::Sqlite { .. } => "SQLite",
+            Self::Postgres(_) => "PostgreSQL",
+        }
+    }
+
+    /// Waits until every connection is closed.
+    pub async fn close(&self) {
+        match self {
+            Self::Sqlite { write, read } => {
+                read.close().await;
+                write.close().await;
+            }
+            Self::Postgres(pool) => pool.close().await,
+        }
+    }
+}
+
+impl Held {
+    /// To run statements on.
+    pub fn conn(&mut self) -> Conn<'_> {
+        match self {
+            Self::Sqlite(held) => Conn::Sqlite(held),
+            Self::Postgres(held) => Conn::Postgres(held),
+        }
+    }
+}
+
+impl Tx {
+    /// To run statements on.
+    pub fn conn(&mut self) -> Conn<'_> {
+        match self {
+            Self::Sqlite(tx) => Conn::Sqlite(tx),
+            Self::Postgres(tx) => Conn::Postgres(tx),
+        }
+    }
+
+    /// Makes everything durable.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`]; whether the server committed is then not known.
+    pub async fn commit(self) -> Result<(), StoreError> {
+        match self {
+            Self::Sqlite(tx) => tx.commit().await?,
+            Self::Postgres(tx) => tx.commit().await?,
+        }
+        Ok(())
+    }
+
+    /// Undoes everything.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`]; nothing was written in any case.
+    pub async fn rollback(self) -> Result<(), StoreError> {
+        match self {
+            Self::Sqlite(tx) => tx.rollback().await?,
+            Self::Postgres(tx) => tx.rollback().await?,
+        }
+        Ok(())
+    }
+}
+
+async fn open_file(file: &Path) -> Result<Db, StoreError> {
+    let options = SqliteConnectOptions::new()
+        .filename(file)
+        .create_if_missing(true)
+        .journal_mode(SqliteJournalMode::Wal)
+        .synchronous(SqliteSynchronous::Full)
+        .foreign_keys(true)
+        .busy_timeout(PATIENCE)
+        .statement_cache_capacity(STATEMENTS);
+    let pool = || SqlitePoolOptions::new().acquire_timeout(PATIENCE);
+    let write = pool().max_connections(1).connect_with(options.clone()).await?;
+    let read = pool().max_connections(8).connect_with(options.read_only(true)).await?;
+    Ok(Db::Sqlite { write, read })
+}
+
+async fn open_server(url: &str) -> Result<Db, StoreError> {
+    let options = PgConnectOptions::from_str(url)?.statement_cache_capacity(STATEMENTS);
+    let pool = PgPoolOptions::new().acquire_timeout(PATIENCE).max_connections(16);
+    Ok(Db::Postgres(pool.connect_with(options).await?))
+}

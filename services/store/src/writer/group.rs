@@ -1,0 +1,156 @@
+//! A task that commits whatever waits together, and falls back to one command a commit when a group fails.
+
+use std::collections::hash_map::Entry;
+use std::collections::{BTreeMap, HashMap};
+use std::sync::Arc;
+use std::sync::atomic::Ordering;
+
+use domain::book::command::Command;
+use domain::ids::SiteId;
+use domain::ledger::tree::TreeHead;
+use tokio::sync::mpsc;
+
+use super::bench::Bench;
+use super::{Answer, GROUP, Job, Shared, WriteError};
+use crate::error::chain;
+use crate::{Conn, StoreError, sites};
+
+/// Serves until nobody can send any more.
+pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
+    let mut room = Room { shared, benches: HashMap::new() };
+    let mut group = Vec::with_capacity(GROUP);
+    while jobs.recv_many(&mut group, GROUP).await > 0 {
+        room.serve(std::mem::take(&mut group)).await;
+    }
+}
+
+struct Room {
+    shared: Arc<Shared>,
+    benches: HashMap<SiteId, Bench>,
+}
+
+impl Room {
+    async fn serve(&mut self, jobs: Vec<Job>) {
+        match self.attempt(&jobs).await {
+            Ok(answers) => {
+                for (job, answer) in jobs.into_iter().zip(answers) {
+                    reply(job, answer);
+                }
+            }
+            Err(error) if jobs.len() == 1 || error.concerns_everyone() => {
+                tracing::error!(
+                    error = chain(&error),
+                    commands = jobs.len(),
+                    "nothing was written"
+                );
+                for job in jobs {
+                    reply(job, Err(error.clone()));
+                }
+            }
+            Err(error) => {
+                tracing::warn!(error = chain(&error), "a group failed and is done one by one");
+                self.shared.counters.retries.fetch_add(1, Ordering::Relaxed);
+                self.serve_singly(jobs).await;
+            }
+        }
+    }
+
+    async fn serve_singly(&mut self, jobs: Vec<Job>) {
+        for job in jobs {
+            let answer = match self.attempt(std::slice::from_ref(&job)).await {
+                Ok(mut answers) => answers.pop().unwrap_or(Err(WriteError::Closing)),
+                Err(error) => {
+                    tracing::error!(error = chain(&error), "nothing was written");
+                    Err(error)
+                }
+            };
+            reply(job, answer);
+        }
+    }
+
+    /// One transaction. After a failure nothing that memory holds is believed.
+    async fn attempt(&mut self, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
+        let outcome = self.commit(jobs).await;
+        if outcome.is_err() {
+            self.benches.clear();
+        }
+        outcome
+    }
+
+    async fn commit(&mut self, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
+        let mut tx = self.shared.db.begin().await?;
+        let mut answers = BTreeMap::new();
+        let mut heads = Vec::new();
+        let mut entries = 0;
+        for (site, places) in by_site(jobs) {
+            let Some(bench) = bench(&mut self.benches, &mut tx.conn(), site).await? else {
+                answers.extend(places.into_iter().map(|place| (place, Err(WriteError::NoSite))));
+                continue;
+            };
+            let commands: Vec<&Command> = places.iter().map(|&p| &jobs[p].command).collect();
+            let done = bench.carry_out(&mut tx.conn(), &self.shared.tools, &commands).await?;
+            answers.extend(places.into_iter().zip(done.answers));
+            heads.extend(done.head.map(|head| (site, head)));
+            entries += done.entries;
+        }
+        if heads.is_empty() {
+            tx.rollback().await?;
+        } else {
+            tx.commit().await.map_err(|error| WriteError::Unsure(Arc::new(error)))?;
+            self.announce(&heads, entries);
+        }
+        Ok(answers.into_values().collect())
+    }
+
+    /// Says what is durable now.
+    fn announce(&self, heads: &[(SiteId, TreeHead)], entries: usize) {
+        let counters = &self.shared.counters;
+        counters.commits.fetch_add(1, Ordering::Relaxed);
+        counters.entries.fetch_add(entries as u64, Ordering::Relaxed);
+        for (site, head) in heads {
+            if let Some(bench) = self.benches.get(site) {
+                bench.publish(&self.shared.published);
+                (self.shared.tools.committed)(&bench.site.origin, head);
+            }
+        }
+    }
+}
+
+async fn bench<'a>(
+    benches: &'a mut HashMap<SiteId, Bench>,
+    conn: &mut Conn<'_>,
+    site: SiteId,
+) -> Result<Option<&'a mut Bench>, StoreError> {
+    match benches.entry(site) {
+        Entry::Occupied(bench) => Ok(Some(bench.into_mut())),
+        Entry::Vacant(place) => {
+            let found = sites::by_id(conn, site).await?;
+            Ok(found.map(|site| place.insert(Bench::new(site))))
+        }
+    }
+}
+
+/// Which places of the group are whose.
+fn by_site(jobs: &[Job]) -> BTreeMap<SiteId, Vec<usize>> {
+    let mut places: BTreeMap<SiteId, Vec<usize>> = BTreeMap::new();
+    for (place, job) in jobs.iter().enumerate() {
+        places.entry(job.site).or_default().push(place);
+    }
+    places
+}
+
+/// Whoever asked may have hung up; what is done stays done.
+fn reply(job: Job, answer: Answer) {
+    let _ = job.answer.send(answer);
+}
+
+impl WriteError {
+    /// Whether trying one by one is useless.
+    fn concerns_everyone(&self) -> bool {
+        match self {
+            Self::Unsure(_) | Self::Unsigned(_) => true,
+            Self::Store(error) => error.is_unavailable(),
+            _ => false,
+        }
+    }
+}

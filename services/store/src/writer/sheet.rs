@@ -1,0 +1,149 @@
+//! What a group has decided for one site so far, before any of it is written.
+
+use std::collections::{HashMap, HashSet};
+use std::sync::Arc;
+
+use domain::book::command::{Blob, Command, DirectoryWrite, Need};
+use domain::book::subject::Subject;
+use domain::book::table::{Cell, Change};
+use domain::book::tables::CODE;
+use domain::book::{Appended, Desk, Position, Sealed};
+use domain::ids::{CommandId, EntryId};
+use domain::ledger::tiles::Edge;
+use domain::ledger::tree::{Hash, TreeHead};
+use domain::stamp::Micros;
+
+use super::clock::Clock;
+use super::{Receipt, Tools, WriteError};
+use crate::log::{self, Head};
+use crate::projections::Pending;
+use crate::sites::Site;
+use crate::{Conn, StoreError, blobs, directory, read, tiles};
+
+pub(super) struct Sheet {
+    pub(super) position: Position,
+    pub(super) clock: Clock,
+    /// Subjects on the desk, all of them held against the locked counters.
+    pub(super) subjects: HashSet<Subject>,
+    entries: Vec<Sealed>,
+    by_id: HashMap<EntryId, usize>,
+    answered: HashMap<CommandId, ([u8; 32], Receipt)>,
+    pending: Pending,
+    blobs: Vec<Blob>,
+    directory: Vec<DirectoryWrite>,
+}
+
+impl Sheet {
+    pub(super) fn new(head: Head) -> Self {
+        let size = head.frontier.size();
+        Self {
+            position: Position {
+                size,
+                frontier: head.frontier,
+                last_recorded_at: head.last_recorded_at,
+            },
+            clock: Clock { last: head.last_recorded_at, corrected: head.clock_corrected },
+            subjects: HashSet::new(),
+            entries: Vec::new(),
+            by_id: HashMap::new(),
+            answered: HashMap::new(),
+            pending: Pending::default(),
+            blobs: Vec::new(),
+            directory: Vec::new(),
+        }
+    }
+
+    /// Takes a command's entries and what follows from them.
+    pub(super) fn take(
+        &mut self,
+        command: &Command,
+        appended: Appended,
+    ) -> Result<Receipt, StoreError> {
+        let receipt =
+            Receipt { entries: appended.entries.iter().map(|e| Arc::clone(&e.entry)).collect() };
+        for sealed in appended.entries {
+            self.by_id.insert(sealed.id, self.entries.len());
+            self.entries.push(sealed);
+        }
+        self.pending.add(appended.changes)?;
+        self.blobs.extend(appended.blobs);
+        self.directory.extend(appended.directory);
+        self.answered.insert(command.id, (command.print, receipt.clone()));
+        Ok(receipt)
+    }
+
+    /// The answer to a command that this group has carried out already.
+    pub(super) fn answer_to(&self, command: &Command) -> Option<Result<Receipt, WriteError>> {
+        let (print, receipt) = self.answered.get(&command.id)?;
+        Some(if *print == command.print { Ok(receipt.clone()) } else { Err(WriteError::KeyReused) })
+    }
+
+    /// Lays on the desk what this group itself made, since the tables do not have it yet; `false` if it did not.
+    pub(super) fn lay(&self, desk: &mut Desk, need: &Need) -> Result<bool, StoreError> {
+        match need {
+            Need::Entry(id) => {
+                let Some(&index) = self.by_id.get(id) else { return Ok(false) };
+                desk.put_entry(*id, Some(self.entries[index].entry.as_ref().clone()));
+            }
+            Need::Code(kind, code) => {
+                let key = [Cell::from(kind.name()), Cell::from(code.as_str())];
+                let id = match self.pending.find(CODE.name, &key) {
+                    Some(Change::Put(row)) => Some(read::coded_id(row)?),
+                    Some(Change::Remove { .. }) => None,
+                    None => return Ok(false),
+                };
+                desk.put_code(*kind, code, id);
+            }
+            Need::Blob(digest) => {
+                let named = |blob: &&Blob| Hash(blob.digest).to_string() == *digest;
+                let Some(blob) = self.blobs.iter().find(named) else { return Ok(false) };
+                read::lay_rule_set(desk, digest, blob.bytes.clone())?;
+            }
+            Need::Subject(_) => return Ok(false),
+        }
+        Ok(true)
+    }
+
+    /// How many entries wait to be written.
+    pub(super) const fn len(&self) -> usize {
+        self.entries.len()
+    }
+
+    /// Takes note of when an entry was recorded.
+    pub(super) fn tick(&mut self, now: Micros, was_correction: bool) {
+        self.clock = self.clock.after(now, self.position.last_recorded_at, was_correction);
+    }
+
+    /// Writes it all; the head comes last.
+    pub(super) async fn write(
+        &self,
+        conn: &mut Conn<'_>,
+        site: &Site,
+        edge: &mut Edge,
+        tools: &Tools,
+    ) -> Result<TreeHead, WriteError> {
+        log::append(conn, site.number, &self.entries).await?;
+        self.pending.write(conn, site.number).await?;
+        for blob in &self.blobs {
+            blobs::put(conn, site.number, blob).await?;
+        }
+        for write in &self.directory {
+            directory::write(conn, site.number, write).await?;
+        }
+        for tile in self.entries.iter().flat_map(|entry| edge.push(entry.leaf_hash)) {
+            tiles::put(conn, site.number, &tile).await?;
+        }
+        let head = self.position.frontier.head();
+        let note =
+            (tools.sign)(&site.origin, head.size, &head.root).map_err(WriteError::Unsigned)?;
+        let row = Head {
+            frontier: self.position.frontier.clone(),
+            root: head.root,
+            note,
+            last_recorded_at: self.position.last_recorded_at,
+            clock_corrected: self.clock.corrected,
+        };
+        log::put_head(conn, site.number, &row).await?;
+        Ok(head)
+    }
+}
