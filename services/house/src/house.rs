@@ -252,10 +252,7 @@ impl House {
     ///
     /// # Errors
     /// [`HouseError::Failed`] if the origin cannot name a key.
-    pub fn verifier(
-        &self,
-        origin: &str,
-    ) -> Result<domain::ledger::note::VerifierKey, HouseError> {
+    pub fn verifier(&self, origin: &str) -> Result<domain::ledger::note::VerifierKey, HouseError> {
         let key = self.inner.secrets.log_key().verifying_key();
         domain::ledger::note::VerifierKey::new(origin, key)
             .map_err(|e| HouseError::Failed(e.to_string()))
@@ -285,9 +282,7 @@ pub struct Asked {
 
 /// Clock, ids and signatures for the writer.
 fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
-    let last = Arc::new(
-        secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?,
-    );
+    let last = Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
     let (time, id_time, key) = (clock.clone(), clock.clone(), Arc::clone(secrets));
     Ok(Tools {
         clock: Arc::new(move || time.now()),

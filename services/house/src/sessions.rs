@@ -78,7 +78,7 @@ impl House {
     /// [`HouseError::Store`].
     pub async fn printed_name(
         &self,
-        site: &store::sites::Site,
+        site: &sites::Site,
         person: PersonId,
     ) -> Result<String, HouseError> {
         let mut held = self.inner.db.reader().await?;
