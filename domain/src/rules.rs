@@ -251,7 +251,27 @@ impl RuleSet {
                 return wrong(id, "a rule that is switched off says why");
             }
         }
-        Ok(())
+        self.faults().next().map_or(Ok(()), |(id, reason)| wrong(id, reason))
+    }
+
+    /// Rules that could never speak, or that would compare unlike things.
+    fn faults(&self) -> impl Iterator<Item = (&str, &'static str)> {
+        let doses =
+            self.dose_limit.iter().filter_map(|rule| Some((rule.id.as_str(), rule.fault()?)));
+        let silent = "give it sugar_used or since_last_dose: as it stands it says nothing";
+        let times = self
+            .timing_limit
+            .iter()
+            .filter(|rule| rule.sugar_used.is_empty() && rule.since_last_dose.is_none())
+            .map(move |rule| (rule.id.as_str(), silent));
+        let levels = self
+            .level_band
+            .iter()
+            .filter(|rule| {
+                rule.bands.iter().any(|band| band.above.is_none() && band.below.is_none())
+            })
+            .map(|rule| (rule.id.as_str(), "each band has a bound above or below"));
+        doses.chain(times).chain(levels)
     }
 
     /// Every rule's id and source, switched off or not, in the order of the forms.

@@ -111,6 +111,20 @@ impl DoseLimit {
         Some(self.rest_parts(&Tally::of(self, case), volume_ul) / PARTS)
     }
 
+    /// Why the rule could never be judged.
+    pub(super) fn fault(&self) -> Option<&'static str> {
+        match (self.counts, self.limit.measure()) {
+            (Counts::Substance, _) if self.substances.is_empty() => {
+                Some("name the substances that count")
+            }
+            (Counts::Substance, Dimension::Mass) | (Counts::CarrierWater, Dimension::Volume) => {
+                None
+            }
+            (Counts::Substance, _) => Some("a substance is limited by its mass per volume"),
+            (Counts::CarrierWater, _) => Some("carrier water is limited by volume per volume"),
+        }
+    }
+
     /// Whether the dose stays within the limit.
     pub(crate) fn keeps(&self, case: &Case<'_>) -> bool {
         let total = Tally::of(self, case).total();
