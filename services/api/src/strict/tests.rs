@@ -97,6 +97,10 @@ fn numbers_that_not_everybody_reads_alike_are_refused() {
         let (pointer, _) = fault(body);
         assert!(["/lines/0/casks", "/lines/0"].contains(&pointer.as_str()), "{number}: {pointer}");
     }
+    for number in ["9007199254740992", "-9007199254740992", "18446744073709551615", "0.5"] {
+        let problem = parse::<Value>(format!("[0,{number}]").as_bytes()).unwrap_err();
+        assert_eq!(problem.errors()[0].pointer, "/1", "{number}");
+    }
     let largest = json!({"n": 9_007_199_254_740_991_i64, "m": -9_007_199_254_740_991_i64});
     assert_eq!(parse::<Value>(largest.to_string().as_bytes()).unwrap().raw, largest);
 }
