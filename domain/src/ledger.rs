@@ -10,6 +10,7 @@
 //! Everything in this module is a pure function, and none of it may ever change its answer: old books must verify.
 
 pub mod canonical;
+pub mod entry;
 pub mod note;
 pub mod tiles;
 pub mod tree;

@@ -31,6 +31,12 @@ impl Micros {
         Self(self.0.saturating_add(hours.saturating_mul(3_600_000_000)))
     }
 
+    /// This many minutes later (or earlier, if negative).
+    #[must_use]
+    pub const fn plus_minutes(self, minutes: i64) -> Self {
+        Self(self.0.saturating_add(minutes.saturating_mul(60_000_000)))
+    }
+
     /// Hours from `earlier` to this instant.
     pub fn hours_since(self, earlier: Self) -> f64 {
         #[expect(clippy::cast_precision_loss, reason = "a microsecond is lost after 285 years")]
@@ -73,6 +79,16 @@ impl Stamp {
         }
         let offset_minutes = i16::try_from(offset.seconds() / 60).map_err(|_| fail())?;
         Ok(Self { at: Micros(at.as_microsecond()), offset_minutes })
+    }
+
+    /// The instant on the wall clock of an IANA time zone; UTC if there is no such zone.
+    pub fn in_zone(at: Micros, zone: &str) -> Self {
+        let offset_minutes = jiff::tz::TimeZone::get(zone)
+            .ok()
+            .zip(Timestamp::from_microsecond(at.0).ok())
+            .and_then(|(zone, at)| i16::try_from(zone.to_offset(at).seconds() / 60).ok())
+            .unwrap_or(0);
+        Self { at, offset_minutes }
     }
 
     /// The instant on a wall clock that far from Greenwich.

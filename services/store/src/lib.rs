@@ -10,6 +10,7 @@ mod commands;
 pub mod db;
 pub mod directory;
 mod error;
+pub mod founding;
 pub mod log;
 pub mod migrate;
 mod projections;

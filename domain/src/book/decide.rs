@@ -1,0 +1,163 @@
+//! What may happen: a command, held against what lies on the desk, becomes entries or a refusal.
+//!
+//! A true event is never refused: what has happened is recorded, and what was wrong with it opens a deviation. Only
+//! what has not happened yet can be stopped.
+
+mod additions;
+mod batches;
+mod lots;
+mod oversight;
+mod readings;
+mod site;
+
+pub use batches::PRODUCT_CLASSES;
+pub use oversight::MEANINGS;
+pub use site::identity;
+
+use std::collections::BTreeSet;
+
+use uuid::Uuid;
+
+use super::body::Body;
+use super::command::{Act, AmendTo, Command, Decision, Draft, Refusal, Stop};
+use super::desk::Desk;
+use super::role::Role;
+use super::subject::Subject;
+use crate::ids::{EntryId, SiteId};
+use crate::stamp::{Micros, Stamp};
+
+/// The engine whose computed figures stand in entries.
+pub const ENGINE: &str = concat!("tallystave ", env!("CARGO_PKG_VERSION"));
+
+/// Everything a decision leans on.
+pub(crate) struct Deciding<'a> {
+    pub(crate) desk: &'a Desk,
+    pub(crate) command: &'a Command,
+    pub(crate) now: Micros,
+    draw: &'a mut dyn FnMut() -> Uuid,
+}
+
+impl Deciding<'_> {
+    /// A new id.
+    pub(crate) fn id<T: From<Uuid>>(&mut self) -> T {
+        (self.draw)().into()
+    }
+
+    /// A draft about these subjects.
+    pub(crate) fn draft(
+        &mut self,
+        occurred_at: Stamp,
+        subjects: impl IntoIterator<Item = Subject>,
+        body: impl Into<Body>,
+    ) -> Draft {
+        Draft {
+            id: self.id::<EntryId>(),
+            occurred_at,
+            captured_at: None,
+            subjects: subjects.into_iter().collect(),
+            body: body.into(),
+        }
+    }
+
+    /// Refuses unless the caller has one of these roles now.
+    pub(crate) fn needs(&self, roles: &[Role], to: &str) -> Result<(), Refusal> {
+        if roles.iter().any(|role| self.command.roles.contains(role)) {
+            return Ok(());
+        }
+        let names: Vec<_> = roles.iter().map(|role| role.name()).collect();
+        Err(Refusal::forbidden(format!("to {to} one needs the role {}", names.join(" or "))))
+    }
+}
+
+/// Decides.
+///
+/// # Errors
+/// [`Stop`].
+pub(crate) fn decide(
+    desk: &Desk,
+    command: &Command,
+    now: Micros,
+    draw: &mut dyn FnMut() -> Uuid,
+) -> Result<Decision, Stop> {
+    let mut deciding = Deciding { desk, command, now, draw };
+    let it = &mut deciding;
+    if !matches!(command.act, Act::Found(_)) {
+        desk.site()?;
+    }
+    match &command.act {
+        Act::Found(act) => site::found(it, act),
+        Act::CorrectClock(act) => Ok(site::correct_clock(it, act)),
+        Act::Enrol(act) => site::enrol(it, act),
+        Act::Grant(person, role) => site::grant(it, *person, *role),
+        Act::Withdraw(person, role, reason) => site::withdraw(it, *person, *role, reason.clone()),
+        Act::ChangeSettings(settings, reason) => site::change_settings(it, settings, reason),
+        Act::Adopt(act) => site::adopt(it, act),
+        Act::DescribeMaterial(body) => site::describe(it, body.clone()),
+        Act::DescribeParty(body) => site::describe(it, body.clone()),
+        Act::DescribeVessel(body) => site::describe_vessel(it, body),
+        Act::DescribeInstrument(body) => site::describe(it, body.clone()),
+        Act::Receive(act) => lots::receive(it, act),
+        Act::ChangeLotStatus(lot, status, reason) => lots::change_status(it, *lot, *status, reason),
+        Act::OpenBatch(act) => batches::open(it, act),
+        Act::TakeReading(act) => readings::take(it, act),
+        Act::Propose(act) => additions::propose(it, act),
+        Act::Add(act) => additions::add(it, act),
+        Act::SignOff(act) => oversight::sign_off(it, act),
+        Act::OpenDeviation(act) => oversight::open_deviation(it, act),
+        Act::ResolveDeviation(act) => oversight::resolve_deviation(it, act),
+        Act::Amend(act) => oversight::amend(it, act),
+        Act::Issue(act) => oversight::issue(it, act),
+    }
+}
+
+/// What a command will surely lean on.
+pub(crate) fn subjects_of(site: SiteId, act: &Act) -> Vec<Subject> {
+    let mut subjects = BTreeSet::from([Subject::from(site)]);
+    let draws = match act {
+        Act::TakeReading(act) => {
+            subjects.insert(act.batch.into());
+            &[][..]
+        }
+        Act::Propose(act) => {
+            subjects.insert(act.batch.into());
+            &act.draws[..]
+        }
+        Act::Add(act) => {
+            subjects.insert(act.batch.into());
+            &act.draws[..]
+        }
+        Act::OpenBatch(act) => {
+            subjects.insert(act.batch.into());
+            subjects.insert(act.vessel.into());
+            &act.ingredients[..]
+        }
+        Act::Receive(act) => {
+            subjects.insert(act.lot.into());
+            subjects.insert(act.material.into());
+            &[][..]
+        }
+        Act::ChangeLotStatus(lot, ..) => {
+            subjects.insert((*lot).into());
+            &[][..]
+        }
+        Act::Grant(person, _) | Act::Withdraw(person, ..) => {
+            subjects.insert((*person).into());
+            &[][..]
+        }
+        Act::Issue(act) => {
+            subjects.insert(act.batch.into());
+            &[][..]
+        }
+        Act::ResolveDeviation(act) => {
+            subjects.insert(act.deviation.into());
+            &[][..]
+        }
+        Act::Amend(act) => match &act.effect {
+            AmendTo::Addition(add) => &add.draws[..],
+            _ => &[][..],
+        },
+        _ => &[][..],
+    };
+    subjects.extend(draws.iter().map(|draw| Subject::from(draw.lot)));
+    subjects.into_iter().collect()
+}

@@ -1,0 +1,372 @@
+//! Proposals and additions.
+//!
+//! A proposal is always recorded, whatever the answer: proof that the warning was given. An addition that carries
+//! out a proposal is held against it. An addition already made is always recorded; what is wrong with it opens one
+//! deviation with all that was found.
+
+use super::lots::{derived, zone};
+use super::{Deciding, ENGINE};
+use crate::book::assessing::{Prepared, Question, assess, settings_of};
+use crate::book::body::additions::Shortfall;
+use crate::book::body::{
+    AdditionRecorded, DeviationOpened, Direction, Leg, Line, ProposalAssessed,
+};
+use crate::book::command::{Add, Decision, Draw, Propose, Refusal, Stop, not_ahead};
+use crate::book::state::{BatchState, LotState, ProposalState};
+use crate::book::subject::Subject;
+use crate::checks::{Assessment, Finding, Verdict};
+use crate::ids::{DeviationId, HoldingId};
+use crate::settings::{Setting, Settings};
+use crate::stamp::{Micros, Stamp};
+use crate::units::{Decimal, Dimension, Quantity};
+
+/// The most lots one addition draws from.
+const MOST_LINES: usize = 40;
+
+pub(super) fn propose(it: &mut Deciding<'_>, act: &Propose) -> Result<Decision, Stop> {
+    enough_lines(&act.draws)?;
+    let batch = it.desk.batch(act.batch)?;
+    let settings = settings_of(&it.desk.site()?.settings)?;
+    let earliest = it.now.plus_hours(-1);
+    if act.planned_at.at < earliest {
+        return Err(Refusal::meaningless(
+            "/planned_at",
+            "this lies more than an hour back: if it has been done, record it as an addition already done",
+        )
+        .into());
+    }
+    let question = Question {
+        batch: act.batch,
+        at: act.planned_at.at,
+        draws: act.draws.clone(),
+        carrier_water: act.carrier_water.clone(),
+        preparation: act.preparation,
+        already_done: false,
+        actor: it.command.actor,
+    };
+    let prepared = match &act.prepared {
+        Some(prepared) if prepared.stands_on(it.desk) => prepared.as_ref().clone(),
+        _ => assess(it.desk, &question, it.now)?,
+    };
+    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
+    let holding = opened.holding;
+    let lapses_at = Stamp::new(
+        Micros(act.planned_at.at.0 + span(&settings, Setting::ProposalLapseHours)),
+        act.planned_at.offset_minutes,
+    );
+    let body = ProposalAssessed {
+        proposal: act.proposal,
+        batch: act.batch,
+        holding,
+        planned_at: act.planned_at,
+        lapses_at,
+        shown: shown(act, lapses_at, &prepared)?,
+        lines: prepared.lines,
+        carrier_water: act.carrier_water.clone(),
+        preparation: act.preparation,
+        purpose: act.purpose.clone(),
+        assessment: prepared.assessment,
+    };
+    let mut subjects: Vec<Subject> = vec![act.batch.into(), holding.into()];
+    subjects.extend(act.draws.iter().map(|draw| Subject::from(draw.lot)));
+    let draft = it.draft(act.asked_at, subjects, body);
+    Ok(Decision { drafts: vec![draft], ..Decision::default() })
+}
+
+fn enough_lines(draws: &[Draw]) -> Result<(), Refusal> {
+    if draws.is_empty() || draws.len() > MOST_LINES {
+        return Err(Refusal::meaningless("/lines", format!("give 1 to {MOST_LINES} lots")));
+    }
+    if let Some(index) = draws.iter().position(|draw| draw.amount.base() == 0) {
+        return Err(Refusal::meaningless(
+            &format!("/lines/{index}/amount"),
+            "an addition of nothing is none: give the amount",
+        ));
+    }
+    let mut lots: Vec<_> = draws.iter().map(|draw| draw.lot).collect();
+    lots.sort();
+    lots.dedup();
+    if lots.len() < draws.len() {
+        return Err(Refusal::meaningless("/lines", "name each lot once, with its whole amount"));
+    }
+    Ok(())
+}
+
+/// SHA-256 over what a signer is shown: the proposal, its lines, its window, and everything that was found.
+fn shown(act: &Propose, lapses_at: Stamp, prepared: &Prepared) -> Result<String, Stop> {
+    let lines: Vec<_> = prepared
+        .lines
+        .iter()
+        .map(|line| serde_json::json!({"lot": line.lot_code, "material": line.material_name, "amount": line.amount}))
+        .collect();
+    let value = serde_json::json!({
+        "proposal": act.proposal,
+        "planned_at": act.planned_at,
+        "lapses_at": lapses_at,
+        "lines": lines,
+        "found": prepared.assessment.findings,
+        "verdict": prepared.assessment.verdict,
+    });
+    crate::ledger::canonical::digest(&value)
+        .map(|digest| digest.to_string())
+        .map_err(|e| Refusal::meaningless("", e.to_string()).into())
+}
+
+pub(super) fn add(it: &mut Deciding<'_>, act: &Add) -> Result<Decision, Stop> {
+    let body = addition(it, act)?;
+    let mut subjects: Vec<Subject> = vec![act.batch.into(), body.holding.into()];
+    subjects.extend(act.draws.iter().map(|draw| Subject::from(draw.lot)));
+    subjects.extend(body.legs.iter().map(|leg| Subject::from(leg.holding)));
+    let opens = body.already_done.is_some() && body.assessment.verdict >= Verdict::Refer
+        || !body.shortfalls.is_empty();
+    let deviation = opens.then(|| body.clone());
+    let mut addition = it.draft(act.done_at, subjects, body);
+    addition.captured_at = act.captured_at;
+    let mut drafts = vec![addition];
+    if let Some(body) = deviation {
+        let entry = drafts[0].id;
+        let opened = deviation_of(it, act, &body, entry)?;
+        let subjects = [act.batch.into(), body.holding.into(), opened.deviation.into()];
+        let at = Stamp::in_zone(it.now, &zone(it)?);
+        drafts.push(it.draft(at, subjects, opened));
+    }
+    Ok(Decision { drafts, ..Decision::default() })
+}
+
+/// The addition as an entry says it; also what an amendment puts in its place.
+pub(super) fn addition(it: &Deciding<'_>, act: &Add) -> Result<AdditionRecorded, Stop> {
+    enough_lines(&act.draws)?;
+    not_ahead("/done_at", act.done_at, it.now)?;
+    let batch = it.desk.batch(act.batch)?;
+    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
+    let holding = opened.holding;
+    let settings = settings_of(&it.desk.site()?.settings)?;
+    let question = Question {
+        batch: act.batch,
+        at: act.done_at.at,
+        draws: act.draws.clone(),
+        carrier_water: act.carrier_water.clone(),
+        preparation: act.preparation,
+        already_done: act.already_done.is_some(),
+        actor: it.command.actor,
+    };
+    let mut found = assess(it.desk, &question, it.now)?;
+    match (act.proposal, &act.already_done) {
+        (Some(proposal), None) => {
+            let Some(proposal) = batch.proposals.get(&proposal) else {
+                return Err(Refusal::unknown("proposal").into());
+            };
+            held_against(it, act, proposal, &found.assessment, &settings)?;
+        }
+        (None, Some(_)) => {}
+        _ => {
+            return Err(Refusal::meaningless(
+                "/proposal",
+                "name the proposal that this carries out, or say already_done with a reason",
+            )
+            .into());
+        }
+    }
+    let mut legs = Vec::new();
+    let mut shortfalls = Vec::new();
+    for draw in &act.draws {
+        let lot = it.desk.lot(draw.lot)?;
+        draw_legs(lot, draw, holding, &mut legs, &mut shortfalls);
+    }
+    if act.proposal.is_some() && !shortfalls.is_empty() {
+        return Err(Refusal::conflict(
+            "the book has less of a lot than this takes: if it has been done all the same, record it as already done",
+        )
+        .into());
+    }
+    for shortfall in &shortfalls {
+        found.assessment.findings.push(shortfall_finding(&found.lines, shortfall));
+        found.assessment.verdict = found.assessment.verdict.max(Verdict::Refer);
+    }
+    let recorded_at = act.captured_at.map_or(it.now, |captured| captured.at.min(it.now));
+    Ok(AdditionRecorded {
+        batch: act.batch,
+        holding,
+        proposal: act.proposal,
+        lines: found.lines,
+        carrier_water: act.carrier_water.clone(),
+        preparation: act.preparation,
+        already_done: act.already_done.clone(),
+        late: recorded_at.0 - act.done_at.at.0 > span(&settings, Setting::LateEntryHours),
+        assessment: found.assessment,
+        shortfalls,
+        legs,
+    })
+}
+
+/// Takes an amount out of a lot's stock into a holding; what the stock does not cover comes out of the unexplained.
+pub(super) fn draw_legs(
+    lot: &LotState,
+    draw: &Draw,
+    into: HoldingId,
+    legs: &mut Vec<Leg>,
+    shortfalls: &mut Vec<Shortfall>,
+) {
+    let Some((_, received)) = &lot.received else { return };
+    let dimension = draw.amount.dimension().unwrap_or(Dimension::Mass);
+    let covered = lot.remaining_base().clamp(0, draw.amount.base());
+    let missing = draw.amount.base() - covered;
+    if missing == 0 {
+        legs.push(Leg {
+            holding: received.holding,
+            direction: Direction::Out,
+            amount: draw.amount.clone(),
+        });
+    } else {
+        let unexplained = derived(draw.lot, "unexplained");
+        let amount = Quantity::computed(missing, dimension);
+        if covered > 0 {
+            legs.push(Leg {
+                holding: received.holding,
+                direction: Direction::Out,
+                amount: Quantity::computed(covered, dimension),
+            });
+        }
+        legs.push(Leg { holding: unexplained, direction: Direction::Out, amount: amount.clone() });
+        shortfalls.push(Shortfall { lot: draw.lot, unexplained, amount });
+    }
+    legs.push(Leg { holding: into, direction: Direction::In, amount: draw.amount.clone() });
+}
+
+fn shortfall_finding(lines: &[Line], shortfall: &Shortfall) -> Finding {
+    let line = lines.iter().find(|line| line.lot == shortfall.lot);
+    let code = line.map_or("", |line| line.lot_code.as_str());
+    let missing = shortfall.amount.to_string();
+    Finding::new(
+        "stock.shortfall",
+        Verdict::Refer,
+        crate::checks::Basis::SiteSetting,
+        format!("The book has {missing} less of lot {code} than was used."),
+    )
+    .param("lot", code)
+    .param("missing", shortfall.amount.entered())
+    .cured_by("Count the lot, or record the receipt that is missing.")
+}
+
+/// Whether what was done is what was proposed, signed where it had to be, in time, and not worse than it looked.
+fn held_against(
+    it: &Deciding<'_>,
+    act: &Add,
+    proposal: &ProposalState,
+    now_found: &Assessment,
+    settings: &Settings,
+) -> Result<(), Stop> {
+    let Some(proposed) = proposal.body() else { return Err(Refusal::unknown("proposal").into()) };
+    let instead = "propose again, or record it as already done if it has happened";
+    if proposal.done_by.is_some() {
+        return Err(Refusal::conflict("this proposal has been carried out already").into());
+    }
+    if act.done_at.at > proposed.lapses_at.at {
+        return Err(Refusal::conflict(format!(
+            "this proposal lapsed at {}: {instead}",
+            proposed.lapses_at
+        ))
+        .into());
+    }
+    same_amounts(act, &proposed.lines, settings)?;
+    let verdict = proposed.assessment.verdict;
+    if verdict == Verdict::Refuse {
+        return Err(Refusal::conflict(format!("this proposal was refused: {instead}")).into());
+    }
+    let is_signed = proposal.signoffs.iter().any(|(_, _, signoff)| {
+        signoff.binds == proposed.shown
+            && signoff.valid_until.is_none_or(|until| act.done_at.at <= until.at)
+    });
+    if verdict == Verdict::Refer && !is_signed {
+        return Err(Refusal::conflict(
+            "this proposal needs a second person's signature, which is missing or has run out",
+        )
+        .into());
+    }
+    if now_found.verdict > verdict {
+        return Err(Refusal::conflict(format!(
+            "the answer is {} now, and was {} when it was shown: {instead}",
+            now_found.verdict.name(),
+            verdict.name()
+        ))
+        .into());
+    }
+    let unsigned = now_found.findings.iter().find(|finding| {
+        finding.verdict >= Verdict::Refer
+            && !proposed.assessment.findings.iter().any(|shown| shown.rule == finding.rule)
+    });
+    if let Some(finding) = unsigned {
+        return Err(Refusal::conflict(format!(
+            "something new was found that nobody signed: {} ({instead})",
+            finding.sentence
+        ))
+        .into());
+    }
+    debug_assert!(!ENGINE.is_empty() && it.now.0 >= 0);
+    Ok(())
+}
+
+fn same_amounts(act: &Add, proposed: &[Line], settings: &Settings) -> Result<(), Refusal> {
+    if act.draws.len() != proposed.len() {
+        return Err(Refusal::conflict("other lots were proposed: propose again"));
+    }
+    let percent = settings.text(Setting::AmountTolerancePercent);
+    for line in proposed {
+        let Some(done) = act.draws.iter().find(|draw| draw.lot == line.lot) else {
+            return Err(Refusal::conflict(format!(
+                "lot {} was proposed, but another was used: propose again",
+                line.lot_code
+            )));
+        };
+        let tolerance = Decimal::parse(percent)
+            .ok()
+            .and_then(|percent| percent.scaled_by(line.amount.base(), 100))
+            .unwrap_or(0);
+        if (done.amount.base() - line.amount.base()).abs() > tolerance {
+            return Err(Refusal::conflict(format!(
+                "{} of lot {} were proposed, {} are more than {percent} % away from it: propose the amount anew",
+                line.amount, line.lot_code, done.amount
+            )));
+        }
+    }
+    Ok(())
+}
+
+/// The deviation that an addition opens, with everything that was found above information.
+fn deviation_of(
+    it: &mut Deciding<'_>,
+    act: &Add,
+    body: &AdditionRecorded,
+    entry: crate::ids::EntryId,
+) -> Result<DeviationOpened, Stop> {
+    let batch: &BatchState = it.desk.batch(act.batch)?;
+    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
+    let code = format!("{}-D{}", opened.code, batch.deviations.len() + 1);
+    let deviation: DeviationId = it.id();
+    it.desk.code_is_free(crate::book::subject::SubjectKind::Deviation, &code, deviation.0)?;
+    let what: Vec<_> =
+        body.lines.iter().map(|line| format!("{} {}", line.amount, line.material_name)).collect();
+    let findings = body
+        .assessment
+        .findings
+        .iter()
+        .filter(|finding| finding.verdict > Verdict::Clear)
+        .cloned()
+        .collect();
+    Ok(DeviationOpened {
+        deviation,
+        code,
+        title: format!("{} added before it was asked for", what.join(", ")),
+        batch: Some(act.batch),
+        entry: Some(entry),
+        findings,
+    })
+}
+
+/// A setting in hours, as microseconds.
+pub(super) fn span(settings: &Settings, setting: Setting) -> i64 {
+    Decimal::parse(settings.text(setting))
+        .ok()
+        .and_then(|hours| hours.scaled_by(3_600_000_000, 1))
+        .unwrap_or(0)
+}

@@ -1,0 +1,146 @@
+//! Recording what was measured. Corrections are computed here, once, and kept with their method.
+
+use super::{Deciding, ENGINE};
+use crate::book::body::readings::CorrectedGravity;
+use crate::book::body::{Nitrogen, Reading, ReadingTaken};
+use crate::book::command::{Decision, Refusal, Stop, TakeReading, not_ahead};
+use crate::book::readings::{READABLE, readable};
+use crate::densimetry::{Scale, correct};
+use crate::nitrogen::{Ammonium, Yan};
+use crate::units::Decimal;
+
+/// The most values one entry holds.
+const MOST_VALUES: usize = 50;
+
+pub(super) fn take(it: &mut Deciding<'_>, act: &TakeReading) -> Result<Decision, Stop> {
+    let body = reading(it, act)?;
+    let subjects = [act.batch.into(), body.holding.into()];
+    let mut draft = it.draft(act.taken_at, subjects, body);
+    draft.captured_at = act.captured_at;
+    Ok(Decision { drafts: vec![draft], ..Decision::default() })
+}
+
+/// The reading as an entry says it; also what an amendment puts in its place.
+pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTaken, Stop> {
+    not_ahead("/taken_at", act.taken_at, it.now)?;
+    let batch = it.desk.batch(act.batch)?;
+    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
+    let holding = opened.holding;
+    if act.values.is_empty() || act.values.len() > MOST_VALUES {
+        return Err(
+            Refusal::meaningless("/values", format!("give 1 to {MOST_VALUES} values")).into()
+        );
+    }
+    let values = act
+        .values
+        .iter()
+        .enumerate()
+        .map(|(index, value)| checked(it, value, &format!("/values/{index}")))
+        .collect::<Result<Vec<_>, Stop>>()?;
+    Ok(ReadingTaken {
+        batch: act.batch,
+        holding,
+        reported_at: act.reported_at,
+        sample: act.sample.clone(),
+        laboratory: act.laboratory.clone(),
+        nitrogen: nitrogen(&values),
+        values,
+        note: act.note.clone(),
+    })
+}
+
+/// One value, believed or refused with what is believed; a gravity also brought to 20 °C.
+pub(super) fn checked(it: &Deciding<'_>, value: &Reading, at: &str) -> Result<Reading, Stop> {
+    let Some(known) = readable(&value.quantity) else {
+        let names: Vec<_> = READABLE.iter().map(|readable| readable.name).collect();
+        return Err(Refusal::meaningless(
+            &format!("{at}/quantity"),
+            format!("{:?} cannot be read here: use one of {}", value.quantity, names.join(", ")),
+        )
+        .into());
+    };
+    let Some((_, least, most)) = known.units.iter().find(|(unit, ..)| *unit == value.unit) else {
+        let units: Vec<_> = known.units.iter().map(|(unit, ..)| *unit).collect();
+        return Err(Refusal::meaningless(
+            &format!("{at}/unit"),
+            format!("{} is not read in {:?}: use {}", known.name, value.unit, units.join(" or ")),
+        )
+        .into());
+    };
+    let number = Decimal::parse(&value.value)
+        .map_err(|e| Refusal::meaningless(&format!("{at}/value"), e.to_string()))?
+        .to_f64();
+    if !(*least..=*most).contains(&number) {
+        return Err(Refusal::meaningless(
+            &format!("{at}/value"),
+            format!(
+                "a {} of {} {} cannot be: it lies between {least} and {most}; check the digits and the unit",
+                known.name, value.value, value.unit
+            ),
+        )
+        .into());
+    }
+    if let Some(instrument) = value.instrument {
+        it.desk.instrument(instrument)?;
+    }
+    let corrected = match known.name {
+        "gravity" => Some(gravity(value, number, at)?),
+        _ => None,
+    };
+    Ok(Reading { corrected, ..value.clone() })
+}
+
+/// A gravity at 20 °C. Without the sample's temperature it is taken as read, and says so.
+fn gravity(value: &Reading, number: f64, at: &str) -> Result<CorrectedGravity, Refusal> {
+    let wrong = |e: crate::densimetry::DensimetryError, field: &str| {
+        Refusal::meaningless(&format!("{at}/{field}"), e.to_string())
+    };
+    let scale = Scale::parse(&value.unit).map_err(|e| wrong(e, "unit"))?;
+    let temperature =
+        value.sample_temperature.as_deref().map(Decimal::parse).transpose().map_err(|e| {
+            Refusal::meaningless(&format!("{at}/sample_temperature"), e.to_string())
+        })?;
+    let celsius = temperature.map_or(20.0, Decimal::to_f64);
+    let found = correct(number, scale, celsius).map_err(|e| {
+        wrong(e, if temperature.is_some() { "sample_temperature" } else { "value" })
+    })?;
+    let mut method = if temperature.is_some() {
+        found.method.to_owned()
+    } else {
+        "taken as read: no sample temperature was given".to_owned()
+    };
+    for note in found.notes {
+        method.push_str("; ");
+        method.push_str(note);
+    }
+    Ok(CorrectedGravity {
+        sg_20_20: format!("{:.5}", found.sg_20_20),
+        extract: format!("{:.4}", found.apparent_extract),
+        correction: format!("{:.5}", found.correction),
+        method,
+        engine: ENGINE.to_owned(),
+    })
+}
+
+/// Assimilable nitrogen, if both of its parts were found and neither is a mere bound.
+fn nitrogen(values: &[Reading]) -> Option<Nitrogen> {
+    let found = |name: &str| {
+        values.iter().find(|value| value.quantity == name && value.qualifier.is_none())
+    };
+    let ammonium = found("ammonium")?;
+    let amino: f64 = found("primary_amino_nitrogen")?.value.parse().ok()?;
+    let number: f64 = ammonium.value.parse().ok()?;
+    let ammonium = match ammonium.expressed_as.as_deref() {
+        Some("N") => Ammonium::Nitrogen(number),
+        Some("NH3") => Ammonium::Ammonia(number),
+        _ => Ammonium::Ion(number),
+    };
+    let yan = Yan::from_parts(ammonium, amino).ok()?;
+    Some(Nitrogen {
+        ammonium: format!("{:.3}", yan.ammonium_n_mg_l),
+        amino: format!("{:.3}", yan.primary_amino_n_mg_l),
+        total: format!("{:.3}", yan.total_mg_l()),
+        method: "ammonium nitrogen + primary amino nitrogen; N/NH4 0.776484, N/NH3 0.822441 (IUPAC 2021 atomic masses)".to_owned(),
+        engine: ENGINE.to_owned(),
+    })
+}

@@ -1,0 +1,216 @@
+//! A batch: what was filled, what was read, what was proposed, added and signed.
+
+use std::collections::BTreeMap;
+use std::sync::Arc;
+
+use crate::book::body::{
+    AdditionRecorded, BatchOpened, Body, ProposalAssessed, ReadingTaken, SignoffGiven,
+};
+use crate::book::in_force::InForce;
+use crate::book::subject::SubjectKind;
+use crate::book::table::{Cell, Row};
+use crate::book::tables::{BATCH, CODE};
+use crate::ids::{BatchId, DeviationId, ProposalId};
+use crate::ledger::entry::Actor;
+use crate::stamp::{Micros, Stamp};
+
+/// A batch as its entries say.
+#[derive(Clone, Debug)]
+pub struct BatchState {
+    /// Which.
+    pub batch: BatchId,
+    /// The opening; absent before it.
+    pub opened: Option<(Stamp, BatchOpened)>,
+    /// Gravities brought to the common scale, by time.
+    pub gravities: Vec<Gravity>,
+    /// Assimilable nitrogen found, by time of sampling.
+    pub nitrogen: Vec<NitrogenFound>,
+    /// Laboratory or own sugar results in g/L, by time of sampling.
+    pub sugar: Vec<(Micros, f64)>,
+    /// What was added, by time.
+    pub additions: Vec<Arc<InForce>>,
+    /// What was proposed.
+    pub proposals: BTreeMap<ProposalId, ProposalState>,
+    /// When yeast first went in.
+    pub pitched_at: Option<Micros>,
+    /// When the last ingredient that is no nutrient, yeast or sulfite went in.
+    pub last_ingredient_at: Option<Micros>,
+    /// Deviations opened on it.
+    pub deviations: Vec<DeviationId>,
+}
+
+/// One gravity.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Gravity {
+    /// Which entry says so.
+    pub seq: u64,
+    /// When.
+    pub at: Micros,
+    /// Specific gravity 20/20 °C.
+    pub sg: f64,
+    /// Apparent extract, % by mass.
+    pub extract: f64,
+}
+
+/// Assimilable nitrogen of one sample, mg N/L.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct NitrogenFound {
+    /// When the sample was taken.
+    pub sampled_at: Micros,
+    /// As ammonium.
+    pub ammonium: f64,
+    /// As primary amino nitrogen.
+    pub amino: f64,
+}
+
+/// A proposal with what became of it.
+#[derive(Clone, Debug)]
+pub struct ProposalState {
+    /// The entry that records it.
+    pub entry: Arc<InForce>,
+    /// Signatures given on it.
+    pub signoffs: Vec<(Stamp, Actor, SignoffGiven)>,
+    /// The addition that carried it out.
+    pub done_by: Option<u64>,
+}
+
+impl ProposalState {
+    /// What was proposed and answered.
+    pub fn body(&self) -> Option<&ProposalAssessed> {
+        match self.entry.body.as_ref() {
+            Body::ProposalAssessed(body) => Some(body),
+            _ => None,
+        }
+    }
+}
+
+impl BatchState {
+    pub(crate) const fn new(batch: BatchId) -> Self {
+        Self {
+            batch,
+            opened: None,
+            gravities: Vec::new(),
+            nitrogen: Vec::new(),
+            sugar: Vec::new(),
+            additions: Vec::new(),
+            proposals: BTreeMap::new(),
+            pitched_at: None,
+            last_ingredient_at: None,
+            deviations: Vec::new(),
+        }
+    }
+
+    pub(crate) fn apply(&mut self, entry: &Arc<InForce>) {
+        match entry.body.as_ref() {
+            Body::BatchOpened(body) if body.batch == self.batch => self.open(entry, body),
+            Body::ReadingTaken(body) if body.batch == self.batch => self.read(entry, body),
+            Body::AdditionRecorded(body) if body.batch == self.batch => self.add(entry, body),
+            Body::ProposalAssessed(body) if body.batch == self.batch => {
+                let state =
+                    ProposalState { entry: Arc::clone(entry), signoffs: Vec::new(), done_by: None };
+                self.proposals.insert(body.proposal, state);
+            }
+            Body::SignoffGiven(body) => {
+                let signed = body.proposal.and_then(|id| self.proposals.get_mut(&id));
+                if let Some(proposal) = signed {
+                    proposal.signoffs.push((entry.occurred_at, entry.actor, body.clone()));
+                }
+            }
+            Body::DeviationOpened(body) if body.batch == Some(self.batch) => {
+                self.deviations.push(body.deviation);
+            }
+            _ => {}
+        }
+    }
+
+    fn open(&mut self, entry: &InForce, body: &BatchOpened) {
+        if !body.ingredients.is_empty() {
+            self.last_ingredient_at = self.last_ingredient_at.max(Some(entry.occurred_at.at));
+        }
+        self.opened = Some((entry.occurred_at, body.clone()));
+    }
+
+    fn read(&mut self, entry: &InForce, body: &ReadingTaken) {
+        let at = entry.occurred_at.at;
+        for value in &body.values {
+            if let Some(corrected) = &value.corrected
+                && let (Ok(sg), Ok(extract)) =
+                    (corrected.sg_20_20.parse(), corrected.extract.parse())
+            {
+                self.gravities.push(Gravity { seq: entry.seq, at, sg, extract });
+            }
+            if value.quantity == "sugar"
+                && value.qualifier.is_none()
+                && let Ok(g_per_l) = value.value.parse()
+            {
+                self.sugar.push((at, g_per_l));
+            }
+        }
+        if let Some(found) = &body.nitrogen
+            && let (Ok(ammonium), Ok(amino)) = (found.ammonium.parse(), found.amino.parse())
+        {
+            self.nitrogen.push(NitrogenFound { sampled_at: at, ammonium, amino });
+        }
+    }
+
+    fn add(&mut self, entry: &Arc<InForce>, body: &AdditionRecorded) {
+        let at = entry.occurred_at.at;
+        for line in &body.lines {
+            match line.category.as_str() {
+                "yeast" => {
+                    self.pitched_at = Some(self.pitched_at.map_or(at, |first| first.min(at)));
+                }
+                "fruit" | "sugar" | "base" => {
+                    self.last_ingredient_at = self.last_ingredient_at.max(Some(at));
+                }
+                _ => {}
+            }
+        }
+        if let Some(proposal) = body.proposal.and_then(|id| self.proposals.get_mut(&id)) {
+            proposal.done_by = Some(entry.seq);
+        }
+        self.additions.push(Arc::clone(entry));
+    }
+
+    /// The apparent extract it started from: the first gravity.
+    pub fn original(&self) -> Option<Gravity> {
+        self.gravities.first().copied()
+    }
+
+    /// Additions with their bodies, by time.
+    pub fn additions(&self) -> impl Iterator<Item = (&Arc<InForce>, &AdditionRecorded)> {
+        self.additions.iter().filter_map(|entry| match entry.body.as_ref() {
+            Body::AdditionRecorded(body) => Some((entry, body)),
+            _ => None,
+        })
+    }
+
+    pub(crate) fn rows(&self) -> Vec<Row> {
+        let Some((at, body)) = &self.opened else { return Vec::new() };
+        let last = self.gravities.last();
+        vec![
+            Row {
+                table: &BATCH,
+                cells: vec![
+                    self.batch.0.into(),
+                    body.code.as_str().into(),
+                    body.product_class.as_str().into(),
+                    body.vessel.0.into(),
+                    body.holding.0.into(),
+                    at.at.0.into(),
+                    body.liquid.base().into(),
+                    Cell::from(last.map(|gravity| format!("{:.4}", gravity.sg))),
+                    Cell::from(last.map(|gravity| gravity.at.0)),
+                ],
+            },
+            Row {
+                table: &CODE,
+                cells: vec![
+                    SubjectKind::Batch.name().into(),
+                    body.code.as_str().into(),
+                    self.batch.0.into(),
+                ],
+            },
+        ]
+    }
+}

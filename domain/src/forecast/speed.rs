@@ -1,0 +1,146 @@
+//! The speed of a fermentation at its last reading, and how well it is known.
+
+use super::{Point, depth};
+
+/// Speed in z per hour where nothing is known: 0.05 a day, which ends in three weeks. With [`MOST_DOUBT`] the 90 % band
+/// spans 0.01 to 0.26 a day, from a slow mead to a hot molasses wash. A judgement of ours.
+const UNKNOWN_PER_HOUR: f64 = 0.05 / 24.0;
+/// The slowest mean speed believed, z per hour: 0.01 a day would take over three months. It keeps a batch in its lag
+/// from being called still for ever.
+const SLOWEST_PER_HOUR: f64 = 0.01 / 24.0;
+/// A batch that seems to stand is still given this part of its mean speed.
+const LEAST_PART: f64 = 0.1;
+/// The most that a speed may be in doubt, as the natural logarithm of a factor per standard deviation.
+const MOST_DOUBT: f64 = 1.0;
+
+/// Speed in z, with its doubt as a logarithm.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) struct Speed {
+    /// z per hour, above zero.
+    pub(super) per_hour: f64,
+    /// Standard deviation of its logarithm now.
+    doubt_now: f64,
+    /// Variance by which the speed itself wanders, z² per h³.
+    wander: f64,
+}
+
+impl Speed {
+    /// From monotone points, of which there is at least one; `sd` is the error of one fraction.
+    pub(super) fn at_the_last(points: &[Point], sd: f64) -> Self {
+        let [first, .., last] = points else {
+            return Self { per_hour: UNKNOWN_PER_HOUR, doubt_now: MOST_DOUBT, wander: 0.0 };
+        };
+        let span_h = last.at_h - first.at_h;
+        let mean = ((depth(last.fraction) - depth(first.fraction)) / span_h).max(SLOWEST_PER_HOUR);
+        let measured: Vec<Measured> =
+            points.iter().map(|point| Measured::from(*point, sd)).collect();
+        let wander = wander(&measured, mean, span_h);
+        let trend = Trend::through(&measured, mean, wander);
+        let per_hour = trend.speed.max(LEAST_PART * mean);
+        let relative_variance = trend.speed_variance / per_hour.powi(2);
+        let doubt_now = relative_variance.ln_1p().sqrt().min(MOST_DOUBT);
+        Self { per_hour, doubt_now, wander }
+    }
+
+    /// Standard deviation of the logarithm of the progress made in `hours`.
+    ///
+    /// A wandering speed adds the variance q h³/3 to the progress v h. The part it adds here, s/(1 + s) with
+    /// s = q h/(3 v²), is that for small s and stays below 1, so that progress never shrinks as hours go by.
+    pub(super) fn doubt(&self, hours: f64) -> f64 {
+        let added = self.wander * hours / (3.0 * self.per_hour.powi(2));
+        self.doubt_now.hypot((added / (1.0 + added)).sqrt())
+    }
+
+    /// How far the course between two readings bows off the straight line, per unit of `rise` and standard deviation.
+    ///
+    /// A wandering speed held at both ends has the variance q g³ w² (1 − w)²/3 at the part w of the gap g.
+    pub(super) fn bow(&self, gap_h: f64, rise: f64) -> f64 {
+        if rise > 0.0 { (self.wander * gap_h.powi(3) / 3.0).sqrt() / rise } else { 0.0 }
+    }
+}
+
+/// A reading as z with its variance.
+#[derive(Clone, Copy)]
+struct Measured {
+    at_h: f64,
+    depth: f64,
+    variance: f64,
+}
+
+impl Measured {
+    /// dz/df = 1/(2 √(1 − f)), held finite at the end.
+    fn from(point: Point, sd: f64) -> Self {
+        let slope = 0.5 / (1.0 - point.fraction).max(sd).sqrt();
+        let variance = (sd * slope).powi(2);
+        Self { at_h: point.at_h, depth: depth(point.fraction), variance }
+    }
+}
+
+/// The variance per hour by which the speed wanders.
+///
+/// Without evidence, the square of the mean speed over the whole span: a batch's speed changes by about its own size
+/// from start to end. Evidence is each change from one interval's speed to the next, less what reading error explains;
+/// a change that is mostly reading error counts little.
+fn wander(measured: &[Measured], mean: f64, span_h: f64) -> f64 {
+    let (mut changed, mut hours) = (mean.powi(2), span_h);
+    for three in measured.windows(3) {
+        let (before_h, after_h) = (three[1].at_h - three[0].at_h, three[2].at_h - three[1].at_h);
+        let before = (three[1].depth - three[0].depth) / before_h;
+        let after = (three[2].depth - three[1].depth) / after_h;
+        let noise = three[0].variance / before_h.powi(2)
+            + three[1].variance * (1.0 / before_h + 1.0 / after_h).powi(2)
+            + three[2].variance / after_h.powi(2);
+        let weight = mean.powi(2) / (mean.powi(2) + noise);
+        changed += weight * ((after - before).powi(2) - noise).max(0.0);
+        hours += weight * before_h.midpoint(after_h);
+    }
+    changed / hours
+}
+
+/// The state of the local linear trend: z and its speed, with their covariance.
+struct Trend {
+    depth: f64,
+    speed: f64,
+    depth_variance: f64,
+    covariance: f64,
+    speed_variance: f64,
+}
+
+impl Trend {
+    /// Filters the readings in order, starting from the mean speed give or take itself.
+    fn through(measured: &[Measured], mean: f64, wander: f64) -> Self {
+        let mut trend = Self {
+            depth: measured[0].depth,
+            speed: mean,
+            depth_variance: measured[0].variance,
+            covariance: 0.0,
+            speed_variance: mean.powi(2),
+        };
+        for pair in measured.windows(2) {
+            trend.pass(pair[1].at_h - pair[0].at_h, wander);
+            trend.learn(pair[1]);
+        }
+        trend
+    }
+
+    /// Lets time pass.
+    fn pass(&mut self, hours: f64, wander: f64) {
+        self.depth += self.speed * hours;
+        self.depth_variance += hours * (2.0 * self.covariance + hours * self.speed_variance)
+            + wander * hours.powi(3) / 3.0;
+        self.covariance += hours * self.speed_variance + wander * hours.powi(2) / 2.0;
+        self.speed_variance += wander * hours;
+    }
+
+    /// Takes a reading in.
+    fn learn(&mut self, reading: Measured) {
+        let surprise = reading.depth - self.depth;
+        let variance = self.depth_variance + reading.variance;
+        let (depth_gain, speed_gain) = (self.depth_variance / variance, self.covariance / variance);
+        self.depth += depth_gain * surprise;
+        self.speed += speed_gain * surprise;
+        self.speed_variance -= speed_gain * self.covariance;
+        self.covariance *= 1.0 - depth_gain;
+        self.depth_variance *= 1.0 - depth_gain;
+    }
+}

@@ -1,0 +1,50 @@
+//! Asking the checks on a snapshot, outside the writer.
+
+use domain::book::assessing::{Prepared, Question, assess};
+use domain::book::command::Propose;
+use store::writer::Receipt;
+
+use crate::caller::Caller;
+use crate::error::HouseError;
+use crate::house::{Asked, House};
+
+impl House {
+    /// What the checks say to a question now; nothing is recorded.
+    ///
+    /// # Errors
+    /// [`HouseError`].
+    pub async fn assess(
+        &self,
+        caller: &Caller,
+        question: &Question,
+    ) -> Result<Prepared, HouseError> {
+        let site = self.site(caller.site).await?;
+        let mut desk = self.desk(&site, &[site.id.into(), question.batch.into()]).await?;
+        let now = self.now();
+        self.ask(&site, &mut desk, |desk| assess(desk, question, now)).await
+    }
+
+    /// Assesses a proposal on a snapshot and has it recorded; the writer takes the answer if nothing has moved.
+    ///
+    /// # Errors
+    /// [`HouseError`].
+    pub async fn propose(
+        &self,
+        caller: Caller,
+        asked: impl FnOnce(Propose) -> Asked,
+        mut propose: Propose,
+    ) -> Result<Receipt, HouseError> {
+        let question = Question {
+            batch: propose.batch,
+            at: propose.planned_at.at,
+            draws: propose.draws.clone(),
+            carrier_water: propose.carrier_water.clone(),
+            preparation: propose.preparation,
+            already_done: false,
+            actor: domain::ledger::entry::Actor::Person(caller.person),
+        };
+        // If this fails the writer finds the same fault, under the lock, and says so.
+        propose.prepared = self.assess(&caller, &question).await.ok().map(Box::new);
+        self.submit(asked(propose)).await
+    }
+}

@@ -1,0 +1,3 @@
+//! What a person may be on a site: the book's own roles.
+
+pub use domain::book::role::Role;
