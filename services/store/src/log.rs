@@ -24,10 +24,8 @@ pub struct Head {
     pub root: Hash,
     /// Size and root, signed; empty before the first entry.
     pub note: String,
-    /// When the last entry was recorded.
+    /// When the last entry was recorded; after a correction of the clock, what the clock said then.
     pub last_recorded_at: Micros,
-    /// The clock's time when an operator last declared it right, as long as it is behind the log.
-    pub clock_corrected: Option<Micros>,
 }
 
 /// An entry as stored.
@@ -63,18 +61,18 @@ pub struct KeptHead {
     pub note: String,
 }
 
-type HeadRow = (i64, Vec<u8>, Vec<u8>, String, i64, Option<i64>);
+type HeadRow = (i64, Vec<u8>, Vec<u8>, String, i64);
 type EntryRow = (i64, Vec<u8>, Vec<u8>);
 
 const START: &str = "insert into log_head (site, size, frontier, root, note, last_recorded_at) \
     values ($1, 0, $2, $3, '', 0)";
-const HEAD: &str = "select size, frontier, root, note, last_recorded_at, clock_corrected \
+const HEAD: &str = "select size, frontier, root, note, last_recorded_at \
     from log_head where site = $1";
 /// Changes nothing, but holds the row until the transaction ends: PostgreSQL's other writers wait here.
 const LOCK_HEAD: &str = "update log_head set size = size where site = $1 \
-    returning size, frontier, root, note, last_recorded_at, clock_corrected";
+    returning size, frontier, root, note, last_recorded_at";
 const PUT_HEAD: &str = "update log_head set size = $2, frontier = $3, root = $4, note = $5, \
-    last_recorded_at = $6, clock_corrected = $7 where site = $1";
+    last_recorded_at = $6 where site = $1";
 const ENTRY: &str = "select seq, bytes, leaf_hash from entry where site = $1 and seq = $2";
 const ENTRY_BY_ID: &str = "select e.seq, e.bytes, e.leaf_hash from entry_index i \
     join entry e on e.site = i.site and e.seq = i.seq where i.site = $1 and i.id = $2";
@@ -150,7 +148,6 @@ pub(crate) async fn put_head(
         .bind(head.root.as_bytes().as_slice())
         .bind(head.note.as_str())
         .bind(head.last_recorded_at.0)
-        .bind(head.clock_corrected.map(|at| at.0))
         .execute(c)
         .await?
         .rows_affected());
@@ -366,17 +363,11 @@ pub(crate) async fn append(
 }
 
 fn head_of(site: SiteNumber, row: Option<HeadRow>) -> Result<Head, StoreError> {
-    let (length, frontier, root, note, last_recorded_at, clock_corrected) =
+    let (length, frontier, root, note, last_recorded_at) =
         row.ok_or_else(|| StoreError::inconsistent(format!("site {} has no head", site.0)))?;
     let frontier = Frontier::from_bytes(unsigned(length)?, &frontier)
         .map_err(|e| StoreError::inconsistent(e.to_string()))?;
-    Ok(Head {
-        frontier,
-        root: hash(&root)?,
-        note,
-        last_recorded_at: Micros(last_recorded_at),
-        clock_corrected: clock_corrected.map(Micros),
-    })
+    Ok(Head { frontier, root: hash(&root)?, note, last_recorded_at: Micros(last_recorded_at) })
 }
 
 fn stored((seq, bytes, leaf_hash): EntryRow) -> Result<Stored, StoreError> {

@@ -88,7 +88,7 @@ const GRANTS: &[&str] = &[
      end $$",
     "grant usage on schema public to tallystave_app",
     "grant select, insert on entry, tile, blob, signed_head, log_head, site to tallystave_app",
-    "grant update (size, frontier, root, note, last_recorded_at, clock_corrected) on log_head to tallystave_app",
+    "grant update (size, frontier, root, note, last_recorded_at) on log_head to tallystave_app",
     "grant select, insert, update, delete on directory_person, founding_token to tallystave_app",
     "grant select on _sqlx_migrations, projection_version to tallystave_app",
 ];

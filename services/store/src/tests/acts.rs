@@ -217,7 +217,6 @@ pub(super) async fn live(book: &Book) {
     furnish(book).await;
     let settings = BTreeMap::from([("shift_hours".to_owned(), "10".to_owned())]);
     let acts = [
-        adopt(),
         Act::ChangeSettings(settings, "long shifts in harvest".to_owned()),
         describe_material(),
         receive(),
@@ -237,6 +236,7 @@ pub(super) async fn live(book: &Book) {
         signed_at: at(2),
     };
     book.act(Act::SignOff(sign_off)).await.unwrap();
+    book.act(adopt()).await.unwrap();
     book.clock.fetch_add(120_000_000, Ordering::Relaxed);
     book.act(add()).await.unwrap();
     book.act(issue(book).await).await.unwrap();

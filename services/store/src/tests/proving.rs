@@ -46,7 +46,6 @@ async fn write_long_log(book: &Book) {
         frontier,
         note: String::new(),
         last_recorded_at: domain::stamp::Micros(0),
-        clock_corrected: None,
     };
     log::put_head(&mut tx.conn(), number, &head).await.unwrap();
     tx.commit().await.unwrap();

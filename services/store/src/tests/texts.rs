@@ -9,6 +9,7 @@ use crate::rows::{Order, Select};
 const TEXTS: &[(&str, &[&str])] = &[
     ("blobs", crate::blobs::TEXTS),
     ("directory", crate::directory::TEXTS),
+    ("founding", crate::founding::TEXTS),
     ("log", crate::log::TEXTS),
     ("migrate", crate::migrate::TEXTS),
     ("schema", crate::schema::TEXTS),

@@ -183,8 +183,8 @@ async fn two_programs_on_one_database_never_write_on_what_the_other_changed() {
         for i in 0..60 {
             let writers = if i % 2 == 0 { book.writers.clone() } else { other.clone() };
             let command = book.command(reading(batch(), "3.5"));
-            let site = book.site.id;
-            tasks.push(tokio::spawn(async move { writers.submit(site, command).await }));
+            let id = book.site.id;
+            tasks.push(tokio::spawn(async move { writers.submit(id, command).await }));
             tokio::time::sleep(Duration::from_millis(1)).await;
         }
         for task in tasks {
@@ -218,7 +218,7 @@ async fn a_clock_that_goes_back_stops_writing_until_somebody_says_so_in_the_book
         book.act(Act::CorrectClock(correct)).await.unwrap();
         book.clock.store(START + 101_000_000, Ordering::Relaxed);
         let after = book.act(reading(batch(), "3.5")).await.unwrap();
-        assert_eq!(after.entries[0].recorded_at, Micros(START + 600_000_000), "in order");
+        assert_eq!(after.entries[0].recorded_at, Micros(START + 101_000_000));
         book.deep_check().await;
     })
     .await;

@@ -13,7 +13,7 @@ use domain::stamp::Micros;
 use uuid::Uuid;
 
 use super::sheet::Sheet;
-use super::{Answer, Receipt, Tools, WriteError};
+use super::{Answer, Receipt, Tools, WriteError, clock};
 use crate::commands::{self, Earlier};
 use crate::error::chain;
 use crate::read;
@@ -129,22 +129,20 @@ impl Bench {
             return Ok(answer);
         }
         let is_correction = matches!(command.act, Act::CorrectClock(_));
-        let now = (tools.clock)();
-        let recorded = match sheet.clock.next(now, is_correction) {
+        let last = sheet.position.last_recorded_at;
+        let recorded = match clock::next(last, (tools.clock)(), is_correction) {
             Ok(recorded) => recorded,
             Err(behind) => return Ok(Err(behind)),
         };
         let mut drawn = Drawn::new(&*tools.draw);
         for _ in 0..ROUNDS {
-            let mut draw = drawn.from_the_start();
+            let mut draw = drawn.anew();
             let desk = &self.desk;
             let outcome =
                 catch_unwind(AssertUnwindSafe(|| desk.decide(command, recorded, &mut draw)));
             match outcome {
                 Ok(Ok(decision)) => {
-                    let answer = self.append(sheet, command, decision, recorded)?;
-                    sheet.tick(now, is_correction);
-                    return Ok(Ok(answer));
+                    return Ok(Ok(self.append(sheet, command, decision, recorded)?));
                 }
                 Ok(Err(Stop::Refused(refusal))) => return Ok(Err(WriteError::Refused(refusal))),
                 Ok(Err(Stop::Need(needs))) => {
@@ -256,7 +254,7 @@ impl<'a> Drawn<'a> {
         Self { draw, ids: Vec::new() }
     }
 
-    fn from_the_start(&mut self) -> impl FnMut() -> Uuid + use<'_, 'a> {
+    fn anew(&mut self) -> impl FnMut() -> Uuid + use<'_, 'a> {
         let mut next = 0;
         move || {
             if next == self.ids.len() {
