@@ -119,6 +119,25 @@ impl Cluster {
         self.control(&["start"]);
     }
 
+    /// Makes the server a standby that can be read from but not written to; it follows nobody.
+    ///
+    /// # Panics
+    /// If it cannot be restarted.
+    pub fn stand_by(&self) {
+        self.control(&["stop", "--mode=fast"]);
+        let mut touch = self.as_server_program(Path::new("touch"));
+        run(touch.arg(self.data().join("standby.signal")));
+        self.launch();
+    }
+
+    /// Makes a standby the primary.
+    ///
+    /// # Panics
+    /// If it is none.
+    pub fn promote(&self) {
+        self.control(&["promote"]);
+    }
+
     fn data(&self) -> PathBuf {
         self.directory.path().join("data")
     }
@@ -163,7 +182,10 @@ impl Cluster {
 
     /// A server program, as a user it agrees to run as.
     fn as_server(&self, program: &str) -> Command {
-        let path = self.programs.join(program);
+        self.as_server_program(&self.programs.join(program))
+    }
+
+    fn as_server_program(&self, path: &Path) -> Command {
         let mut command = if is_root() {
             let mut command = Command::new("setpriv");
             command.args(["--reuid=postgres", "--regid=postgres", "--init-groups"]).arg(path);

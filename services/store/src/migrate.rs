@@ -22,7 +22,7 @@ static POSTGRES: Migrator = sqlx::migrate!("../../migrations/postgres");
 pub async fn migrate(db: &Db) -> Result<(), StoreError> {
     match db {
         Db::Sqlite { write, .. } => SQLITE.run(write).await?,
-        Db::Postgres(pool) => POSTGRES.run(pool).await?,
+        Db::Postgres(server) => POSTGRES.run(server.pool()).await?,
     }
     let mut tx = db.begin().await?;
     grant(&mut tx.conn()).await?;

@@ -3,6 +3,7 @@
 mod acts;
 mod append_only;
 mod book;
+mod outages;
 mod proving;
 mod rebuilding;
 mod texts;

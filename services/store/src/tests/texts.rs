@@ -17,10 +17,14 @@ const TEXTS: &[(&str, &[&str])] = &[
     ("tiles", crate::tiles::TEXTS),
 ];
 
+/// Texts that only PostgreSQL is asked.
+const POSTGRES_TEXTS: &[(&str, &[&str])] = &[("db/server", crate::db::server::TEXTS)];
+
 async fn check(ground: Ground) {
     let book = Book::open(ground).await;
     let mut held = book.db.reader().await.unwrap();
-    for (file, texts) in TEXTS {
+    let of_engine = if book.db.has_one_writer() { &[] } else { POSTGRES_TEXTS };
+    for (file, texts) in TEXTS.iter().chain(of_engine) {
         for text in *texts {
             let prepared = match held.conn() {
                 Conn::Sqlite(c) => c.prepare(text.into_sql_str()).await.map(drop),

@@ -11,9 +11,10 @@ use domain::stamp::{Micros, Stamp};
 use uuid::Uuid;
 
 use super::acts::{self, at, batch, open_batch, open_deviation, reading, value_of};
+use super::append_only::run;
 use super::book::{Book, START, on_both, site_id, tools};
-use crate::directory;
 use crate::writer::{GROUP, WriteError, Writers};
+use crate::{Db, directory};
 
 fn unknown_batch() -> BatchId {
     BatchId(Uuid::from_u128(1))
@@ -127,7 +128,34 @@ async fn a_command_on_which_the_program_fails_harms_no_other() {
 async fn a_group_that_the_database_refuses_is_done_one_by_one() {
     on_both(async |book| {
         acts::furnish(book).await;
+        let owner = book.ground.owner().await;
+        let trap = match owner {
+            Db::Sqlite { .. } => {
+                "create trigger trap before insert on deviation when new.code = 'D10' \
+                 begin select raise(abort, 'trapped'); end"
+            }
+            Db::Postgres(_) => "alter table deviation add check (code <> 'D10')",
+        };
+        run(&owner, trap).await.unwrap();
+        owner.close().await;
         let size = book.size().await;
+        let open = |i| book.command(open_deviation(i, &format!("D{i}")));
+        let answers = book.together((0..20).map(open).collect()).await;
+
+        for (i, answer) in answers.iter().enumerate() {
+            assert_eq!(answer.is_err(), i == 10, "{i}: {answer:?}");
+        }
+        assert!(matches!(answers[10], Err(WriteError::Store(_))));
+        assert!(book.writers.counters().retries() <= 1);
+        assert_eq!(book.size().await, size + 19);
+        book.deep_check().await;
+    })
+    .await;
+}
+
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn one_login_is_one_persons() {
+    on_both(async |book| {
         let enrol = |number: u128, login: &str| {
             let person = DirectoryPerson {
                 person: PersonId(Uuid::from_u128(number)),
@@ -138,19 +166,18 @@ async fn a_group_that_the_database_refuses_is_done_one_by_one() {
             };
             book.command(Act::Enrol(Enrol { person, roles: Vec::new() }))
         };
-        let mut commands: Vec<_> = (0..20).map(|_| book.command(reading(batch(), "3.5"))).collect();
-        commands.insert(10, enrol(1, "ada"));
-        commands.push(enrol(2, "bo"));
-        let answers = book.together(commands).await;
+        let logins = ["ada", "bo", "bo", "bo", "cy"];
+        let commands = (1..).zip(logins).map(|(number, login)| enrol(number, login));
+        let answers = book.together(commands.collect()).await;
 
-        for (i, answer) in answers.iter().enumerate() {
-            assert_eq!(answer.is_err(), i == 10, "{i}: {answer:?}");
-        }
-        assert!(matches!(answers[10], Err(WriteError::Store(_))));
-        assert_eq!(book.size().await, size + 21);
+        let is_refused = |a: &&Result<_, _>| matches!(a, Err(WriteError::Refused(_)));
+        assert_eq!(answers.iter().filter(is_refused).count(), 3, "{answers:?}");
+        assert!(answers[0].is_err(), "ada founded the book");
         let mut held = book.db.reader().await.unwrap();
-        let bo = directory::by_login(&mut held.conn(), book.site.number, "bo").await.unwrap();
-        assert_eq!(bo.unwrap().id, PersonId(Uuid::from_u128(2)));
+        let (mut conn, site) = (held.conn(), book.site.number);
+        let cy = directory::by_login(&mut conn, site, "cy").await.unwrap();
+        assert_eq!(cy.unwrap().id, PersonId(Uuid::from_u128(5)));
+        assert_eq!(directory::all(&mut conn, site).await.unwrap().len(), 3);
         drop(held);
         book.deep_check().await;
     })

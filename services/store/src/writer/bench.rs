@@ -4,7 +4,7 @@ use std::collections::{HashMap, HashSet};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::Arc;
 
-use domain::book::command::{Act, Command, Decision, Need, Stop};
+use domain::book::command::{Act, Command, Decision, Need, Refusal, Stop};
 use domain::book::subject::Subject;
 use domain::book::{Desk, Loaded};
 use domain::ledger::tiles::Edge;
@@ -19,7 +19,7 @@ use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Conn, StoreError, log, tiles};
+use crate::{Conn, StoreError, directory, log, tiles};
 
 /// How often one command may ask for more before its decision counts as failed.
 const ROUNDS: usize = 64;
@@ -142,6 +142,10 @@ impl Bench {
                 catch_unwind(AssertUnwindSafe(|| desk.decide(command, recorded, &mut draw)));
             match outcome {
                 Ok(Ok(decision)) => {
+                    if self.is_login_taken(conn, sheet, &decision).await? {
+                        let refusal = Refusal::conflict("somebody else signs in with this login");
+                        return Ok(Err(WriteError::Refused(refusal)));
+                    }
                     return Ok(Ok(self.append(sheet, command, decision, recorded)?));
                 }
                 Ok(Err(Stop::Refused(refusal))) => return Ok(Err(WriteError::Refused(refusal))),
@@ -152,6 +156,21 @@ impl Bench {
             }
         }
         Ok(Err(WriteError::Failed("its decision does not come to an end".to_owned())))
+    }
+
+    /// The book does not know the directory's logins, so they are looked up here.
+    async fn is_login_taken(
+        &self,
+        conn: &mut Conn<'_>,
+        sheet: &Sheet,
+        decision: &Decision,
+    ) -> Result<bool, StoreError> {
+        for write in &decision.directory {
+            if sheet.has_login(write) || directory::is_taken(conn, self.site.number, write).await? {
+                return Ok(true);
+            }
+        }
+        Ok(false)
     }
 
     /// Appends a decision. After an error the desk is in disorder, and the group must be given up.

@@ -100,6 +100,14 @@ impl Sheet {
         Ok(true)
     }
 
+    /// Whether this group gives the login to somebody else.
+    pub(super) fn has_login(&self, write: &DirectoryWrite) -> bool {
+        let DirectoryWrite::Person(new) = write;
+        self.directory.iter().any(|DirectoryWrite::Person(other)| {
+            other.login == new.login && other.person != new.person
+        })
+    }
+
     /// How many entries wait to be written.
     pub(super) const fn len(&self) -> usize {
         self.entries.len()
