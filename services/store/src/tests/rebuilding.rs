@@ -5,7 +5,7 @@ use domain::book::tables::tables;
 
 use super::acts;
 use super::append_only::run;
-use super::book::{Book, on_both};
+use super::book::{Book, Ground, on_both};
 use crate::projections::Pending;
 use crate::rebuild::{self, Difference, How};
 use crate::rows::Select;
@@ -109,4 +109,18 @@ async fn tables_of_another_version_are_made_anew_from_the_log() {
         assert_eq!(rebuild::check(&db, &book.site).await.unwrap(), []);
     })
     .await;
+}
+
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn several_servers_may_migrate_at_once() {
+    let ground = Ground::server();
+    let mut tasks = Vec::new();
+    for _ in 0..4 {
+        let db = ground.owner().await;
+        tasks.push(tokio::spawn(async move { crate::migrate::migrate(&db).await }));
+    }
+    for task in tasks {
+        task.await.unwrap().unwrap();
+    }
+    crate::migrate::check(&ground.owner().await).await.unwrap();
 }

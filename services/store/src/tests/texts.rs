@@ -11,6 +11,7 @@ const TEXTS: &[(&str, &[&str])] = &[
     ("directory", crate::directory::TEXTS),
     ("founding", crate::founding::TEXTS),
     ("log", crate::log::TEXTS),
+    ("log/head", crate::log::head::TEXTS),
     ("migrate", crate::migrate::TEXTS),
     ("schema", crate::schema::TEXTS),
     ("sites", crate::sites::TEXTS),

@@ -10,8 +10,8 @@ use domain::book::{Desk, Loaded};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::TreeHead;
 use domain::stamp::Micros;
-use uuid::Uuid;
 
+use super::drawn::Drawn;
 use super::sheet::Sheet;
 use super::{Answer, Receipt, Tools, WriteError, clock};
 use crate::commands::{self, Earlier};
@@ -258,29 +258,6 @@ impl Bench {
         if self.shelf.len() > ROOM {
             let latest = self.group;
             self.shelf.retain(|_, (_, group)| *group == latest);
-        }
-    }
-}
-
-/// The ids of one command: each time it is decided it draws the same ones, so that what it asks for comes to an end.
-struct Drawn<'a> {
-    draw: &'a (dyn Fn() -> Uuid + Send + Sync),
-    ids: Vec<Uuid>,
-}
-
-impl<'a> Drawn<'a> {
-    const fn new(draw: &'a (dyn Fn() -> Uuid + Send + Sync)) -> Self {
-        Self { draw, ids: Vec::new() }
-    }
-
-    fn anew(&mut self) -> impl FnMut() -> Uuid + use<'_, 'a> {
-        let mut next = 0;
-        move || {
-            if next == self.ids.len() {
-                self.ids.push((self.draw)());
-            }
-            next += 1;
-            self.ids[next - 1]
         }
     }
 }
