@@ -40,6 +40,21 @@ pub struct Question {
     pub actor: Actor,
 }
 
+impl Question {
+    /// Nothing is to go in: how does the batch stand?
+    pub const fn nothing(batch: BatchId, at: Micros, actor: Actor) -> Self {
+        Self {
+            batch,
+            at,
+            draws: Vec::new(),
+            carrier_water: None,
+            preparation: body::Preparation::AsDelivered,
+            already_done: false,
+            actor,
+        }
+    }
+}
+
 /// An answer found on a snapshot, with the running numbers it was found on.
 #[derive(Clone, Debug)]
 pub struct Prepared {
@@ -190,7 +205,8 @@ fn proposed_line(lot: &LotState, line: &Line) -> ProposedLine {
     }
 }
 
-fn checks_line(line: &Line) -> checks::Line {
+/// A line as the checks take it.
+pub fn checks_line(line: &Line) -> checks::Line {
     checks::Line {
         lot_code: line.lot_code.clone(),
         material_name: line.material_name.clone(),
