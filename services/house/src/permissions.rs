@@ -106,6 +106,7 @@ pub const TABLE: &[Row] = &[
     row("GET", "/v1/batches/{id}/entries", Who::AnyRole),
     row("GET", "/v1/batches/{id}/record", Who::AnyRole),
     row("POST", "/v1/batches/{id}/record", LEAD_OR_QUALITY),
+    row("GET", "/v1/records/{id}", Who::AnyRole),
     // Entries.
     row("GET", "/v1/entries/{id}", Who::AnyRole),
     row("POST", "/v1/entries/{id}/amendments", CELLAR_AND_UP),
