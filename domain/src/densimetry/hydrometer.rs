@@ -1,8 +1,8 @@
 //! What a hydrometer read off its calibration temperature would have read at it.
 //!
 //! A floating body shows the density of the liquid around it, and its own glass grows with warmth. So
-//! ρ_scale(reading at t_cal) × (1 − g (t − t_cal)) = ρ_liquid(w, t), solved for the sugar w, which is then shown at
-//! t_cal. g = 25·10⁻⁶ per K is the cubic expansion of soda-lime glass; the same model with OIML R 22 reproduces the
+//! `ρ_scale(reading, t_cal) × (1 − g (t − t_cal)) = ρ_liquid(w, t)`, solved for the sugar w, which is then shown at
+//! `t_cal`. g = 25·10⁻⁶ per K is the cubic expansion of soda-lime glass; the same model with OIML R 22 reproduces the
 //! printed hydrometer values of 27 CFR part 30 within 0.05 proof, and misses by 0.2 without g. No published table for
 //! Brix hydrometers could be read; all cells of NBS Circular C440 that are known from memory agree within 0.031 Brix.
 //!

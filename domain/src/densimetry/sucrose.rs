@@ -1,6 +1,6 @@
 //! Density of sucrose in water: ICUMSA SPS-4 (Emmerich and Bettin), on the Kell-90 water.
 //!
-//! ρ(w, t) = ρ_water(t) + Σⱼ xʲ Σᵢ bᵢⱼ wⁱ with w the mass fraction, x = (t − 20 °C)/100, i from 1. Two public texts
+//! `ρ(w, t) = ρ_water(t) + Σⱼ xʲ Σᵢ bᵢⱼ wⁱ` with w the mass fraction, x = (t − 20 °C)/100, i from 1. Two public texts
 //! differ in one coefficient, −3.9646 or −3.9643, worth less than 5·10⁻⁵ kg/m³; the second is used. The range 0 to
 //! 70 % and 0 to 80 °C is from memory. Against the Plato table of 15 and 20 °C it stays within 0.09 kg/m³.
 

@@ -18,10 +18,8 @@ pub(super) fn in_order(points: impl Iterator<Item = Point>) -> Vec<Point> {
 /// Math. Statist. 26 (1955) 641).
 pub(super) fn never_falling(raw: &[Point]) -> Vec<Point> {
     let mut pools: Vec<&[Point]> = Vec::new();
-    let mut end = 0;
     for at in 0..raw.len() {
-        let mut start = at;
-        end += 1;
+        let (mut start, end) = (at, at + 1);
         while let Some(before) = pools.last()
             && mean(before) > mean(&raw[start..end])
         {
