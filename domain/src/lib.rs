@@ -4,9 +4,14 @@
 //! proposal is held against, [`rules`] where the law and the practice stand as data.
 #![forbid(unsafe_code)]
 
+pub mod book;
+pub mod checks;
 pub mod densimetry;
 pub mod forecast;
 pub mod ids;
+pub mod ledger;
 pub mod nitrogen;
+pub mod rules;
+pub mod settings;
 pub mod stamp;
 pub mod units;
