@@ -164,6 +164,15 @@ impl InForce {
 /// # Errors
 /// [`FoldError`].
 pub fn in_force(subject: Subject, entries: &[Entry]) -> Result<Vec<Arc<InForce>>, FoldError> {
+    Ok(here_and_departed(subject, entries)?.0)
+}
+
+/// The entries in force about this subject in the fold's order, and those that were about it until an amendment moved
+/// them elsewhere.
+pub(crate) fn here_and_departed(
+    subject: Subject,
+    entries: &[Entry],
+) -> Result<(Vec<Arc<InForce>>, Vec<Arc<InForce>>), FoldError> {
     let mut originals: BTreeMap<u64, InForce> = BTreeMap::new();
     for entry in entries {
         let read = InForce::original(entry)?;
@@ -179,13 +188,10 @@ pub fn in_force(subject: Subject, entries: &[Entry]) -> Result<Vec<Arc<InForce>>
         let after = before.amended(entry, amendment)?;
         originals.insert(seq, after);
     }
-    let mut list: Vec<_> = originals
-        .into_values()
-        .filter(|entry| entry.subjects.contains(&subject))
-        .map(Arc::new)
-        .collect();
-    list.sort_by_key(|entry| entry.order());
-    Ok(list)
+    let (mut here, departed): (Vec<_>, Vec<_>) =
+        originals.into_values().map(Arc::new).partition(|entry| entry.subjects.contains(&subject));
+    here.sort_by_key(|entry| entry.order());
+    Ok((here, departed))
 }
 
 /// An entry that an amendment moved to this subject from another: what it said before is not told here.
