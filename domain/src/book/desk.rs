@@ -452,6 +452,19 @@ impl Desk {
 
 /// What a decision may ask of the desk.
 impl Desk {
+    /// The desk as if that entry had never been written: what is to stand in its place is judged without it.
+    pub(crate) fn without(&self, entry: &InForce) -> Self {
+        let mut desk = self.clone();
+        for subject in &entry.subjects {
+            if let Some(loaded) = desk.subjects.get_mut(subject) {
+                let loaded = Arc::make_mut(loaded);
+                loaded.remove(entry.seq);
+                loaded.state = State::fold(*subject, &loaded.entries);
+            }
+        }
+        desk
+    }
+
     /// A subject, whether or not there are entries about it.
     ///
     /// # Errors
