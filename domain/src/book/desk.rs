@@ -12,7 +12,7 @@ use uuid::Uuid;
 use super::body::{Body, EntryAmended};
 use super::command::{Blob, Command, Decision, DirectoryWrite, Draft, Need, Refusal, Stop};
 use super::entry_rows::{entry_rows, seq_cell};
-use super::in_force::{FoldError, InForce, here_and_departed};
+use super::in_force::{FoldError, InForce, Known};
 use super::state::{
     BatchState, Described, DeviationState, HoldingState, LotState, PersonState, SiteState, State,
 };
@@ -46,7 +46,7 @@ pub struct Loaded {
 
 impl Loaded {
     fn of(subject: Subject, n: u64, entries: &[Entry]) -> Result<Self, FoldError> {
-        let (entries, departed) = here_and_departed(subject, entries)?;
+        let Known { here: entries, departed } = Known::read(subject, entries)?;
         let state = State::fold(subject, &entries);
         Ok(Self { n, entries, departed, state })
     }
@@ -493,10 +493,9 @@ impl Desk {
     /// [`Stop`].
     pub fn adopted(&self, at: Micros) -> Result<Vec<AdoptedSet>, Stop> {
         let site = self.site()?;
-        let in_force = site.adopted.values().filter(|(since, _)| since.at <= at);
         let mut sets = Vec::new();
         let mut missing = Vec::new();
-        for (_, adopted) in in_force {
+        for adopted in site.binding_at(at) {
             match self.rule_sets.get(&adopted.digest) {
                 Some(set) => sets.push(AdoptedSet {
                     set: Arc::clone(set),

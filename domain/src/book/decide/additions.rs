@@ -29,6 +29,9 @@ const MOST_LINES: usize = 40;
 pub(super) fn propose(it: &mut Deciding<'_>, act: &Propose) -> Result<Decision, Stop> {
     enough_lines(&act.draws)?;
     let batch = it.desk.batch(act.batch)?;
+    if batch.proposals.contains_key(&act.proposal) {
+        return Err(Refusal::conflict("this proposal has been made already").into());
+    }
     let settings = settings_of(&it.desk.site()?.settings)?;
     let earliest = it.now.plus_hours(-1);
     if act.planned_at.at < earliest {
@@ -328,6 +331,13 @@ fn held_against(
     if proposal.done_by.is_some() {
         return Err(Refusal::conflict("this proposal has been carried out already").into());
     }
+    let asked_at = proposal.entry.occurred_at;
+    if is_before(act.done_at, asked_at) {
+        return Err(Refusal::conflict(format!(
+            "this was done before it was proposed at {asked_at}: record it as already done"
+        ))
+        .into());
+    }
     if act.done_at.at > proposed.lapses_at.at {
         return Err(Refusal::conflict(format!(
             "this proposal lapsed at {}: {instead}",
@@ -340,13 +350,14 @@ fn held_against(
     if verdict == Verdict::Refuse {
         return Err(Refusal::conflict(format!("this proposal was refused: {instead}")).into());
     }
-    let is_signed = proposal.signoffs.iter().any(|(_, _, signoff)| {
+    let is_signed = proposal.signoffs.iter().any(|(signed_at, _, signoff)| {
         signoff.binds == proposed.shown
+            && !is_before(act.done_at, *signed_at)
             && signoff.valid_until.is_none_or(|until| act.done_at.at <= until.at)
     });
     if verdict == Verdict::Refer && !is_signed {
         return Err(Refusal::conflict(
-            "this proposal needs a second person's signature, which is missing or has run out",
+            "this proposal needs a second person's signature, which is missing, has run out or came after the fact",
         )
         .into());
     }
@@ -370,6 +381,11 @@ fn held_against(
         .into());
     }
     Ok(())
+}
+
+/// Whether it happened in an earlier minute: people write down minutes, the clock knows more.
+const fn is_before(happened: Stamp, stamp: Stamp) -> bool {
+    happened.at.plus_minutes(1).0 <= stamp.at.0
 }
 
 fn same_amounts(act: &Add, proposed: &[Line], settings: &Settings) -> Result<(), Refusal> {

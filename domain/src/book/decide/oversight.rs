@@ -202,8 +202,22 @@ fn corrected_breach(
     Ok(is_worse(it, act, old, &new)?.then_some(new))
 }
 
-/// The author within the shift; otherwise a lead or quality.
+/// Who answers for what the entry says: people, settings and rule sets are the admin's, whether a lot may be used and
+/// what became of a deviation are quality's. Everything else: the author within the shift; otherwise a lead or quality.
 fn may_amend(it: &Deciding<'_>, target: &InForce) -> Result<(), Stop> {
+    match target.body.as_ref() {
+        Body::PersonEnrolled(_)
+        | Body::RoleGranted(_)
+        | Body::RoleWithdrawn(_)
+        | Body::SettingsChanged(_)
+        | Body::RulesetAdopted(_) => {
+            return Ok(it.needs(&[Role::Admin], "amend people, settings or rule sets")?);
+        }
+        Body::LotStatusChanged(_) | Body::DeviationOpened(_) | Body::DeviationResolved(_) => {
+            return Ok(it.needs(&[Role::Quality], "amend a lot's status or a deviation")?);
+        }
+        _ => {}
+    }
     let settings = settings_of(&it.desk.site()?.settings)?;
     let shift_ends = target.recorded_at.0 + span(&settings, Setting::ShiftHours);
     if target.actor == it.command.actor && it.now.0 <= shift_ends {
