@@ -168,8 +168,13 @@ impl Cellar {
     /// A founded site with the lots that came until 8 September, and the clock there.
     pub(crate) fn stocked() -> Self {
         let mut cellar = Self::founded(false);
-        cellar.receive_all(LOTS);
+        cellar.receive_first();
         cellar
+    }
+
+    /// The lots that came until 8 September.
+    pub(crate) fn receive_first(&mut self) {
+        self.receive_all(LOTS);
     }
 
     /// The lots that came for the wash.
@@ -272,10 +277,6 @@ impl Cellar {
 
     pub(crate) fn lot(&self, code: &str) -> LotId {
         LotId(self.coded(SubjectKind::Lot, code))
-    }
-
-    pub(crate) fn batch(&self, code: &str) -> BatchId {
-        BatchId(self.coded(SubjectKind::Batch, code))
     }
 
     pub(crate) fn material(&self, code: &str) -> MaterialId {
