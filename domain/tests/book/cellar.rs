@@ -359,25 +359,6 @@ impl Cellar {
         id
     }
 
-    /// A reading of these values: quantity, number, unit.
-    pub(crate) fn reading(
-        &self,
-        batch: BatchId,
-        when: &str,
-        values: &[(&str, &str, &str)],
-    ) -> TakeReading {
-        TakeReading {
-            batch,
-            taken_at: at(when),
-            captured_at: None,
-            reported_at: None,
-            sample: None,
-            laboratory: None,
-            values: values.iter().map(value).collect(),
-            note: None,
-        }
-    }
-
     pub(crate) fn take(&mut self, reading: TakeReading) -> Vec<Arc<Entry>> {
         let ana = self.ana.clone();
         self.done(&ana, Act::TakeReading(Box::new(reading)))
@@ -393,7 +374,7 @@ impl Cellar {
     ) -> Vec<Arc<Entry>> {
         self.clock(when);
         let values = [("gravity", sg, "sg_20_20"), ("temperature", celsius, "Cel")];
-        self.take(self.reading(batch, when, &values))
+        self.take(reading(batch, when, &values))
     }
 
     /// A laboratory's ammonium and primary amino nitrogen in mg/L, reported when the clock says.
@@ -406,7 +387,7 @@ impl Cellar {
     ) -> Vec<Arc<Entry>> {
         let reported_at = self.clock(reported);
         let values = [("ammonium", ammonium, "mg/L"), ("primary_amino_nitrogen", amino, "mg/L")];
-        let mut reading = self.reading(batch, sampled, &values);
+        let mut reading = reading(batch, sampled, &values);
         reading.values[0].expressed_as = Some(expressed_as.to_owned());
         reading.reported_at = Some(reported_at);
         reading.laboratory = Some("Example Laboratory".to_owned());
@@ -455,27 +436,10 @@ impl Cellar {
         self.propose(&ana, propose)
     }
 
-    /// The command that carries a proposal out exactly as proposed.
-    pub(crate) fn carrying_out(&self, answer: &Answer, when: &str) -> Add {
-        let said = &answer.said;
-        let draw =
-            |line: &domain::book::body::Line| Draw { lot: line.lot, amount: line.amount.clone() };
-        Add {
-            batch: said.batch,
-            proposal: Some(said.proposal),
-            done_at: at(when),
-            captured_at: None,
-            draws: said.lines.iter().map(draw).collect(),
-            carrier_water: said.carrier_water.clone(),
-            preparation: said.preparation,
-            already_done: None,
-        }
-    }
-
     /// Ana carries a proposal out as proposed, and records it at once.
     pub(crate) fn adds(&mut self, answer: &Answer, when: &str) -> Result<Vec<Arc<Entry>>, Refusal> {
         self.clock(when);
-        let add = self.carrying_out(answer, when);
+        let add = carrying_out(answer, when);
         self.add(add)
     }
 
@@ -626,4 +590,35 @@ pub(crate) fn deviation_of(entry: &Entry) -> DeviationOpened {
 /// Settings by name, for changing them.
 pub(crate) fn settings(pairs: &[(&str, &str)]) -> BTreeMap<String, String> {
     pairs.iter().map(|(name, value)| ((*name).to_owned(), (*value).to_owned())).collect()
+}
+
+/// A reading of these values: quantity, number, unit.
+pub(crate) fn reading(batch: BatchId, when: &str, values: &[(&str, &str, &str)]) -> TakeReading {
+    TakeReading {
+        batch,
+        taken_at: at(when),
+        captured_at: None,
+        reported_at: None,
+        sample: None,
+        laboratory: None,
+        values: values.iter().map(value).collect(),
+        note: None,
+    }
+}
+
+/// The command that carries a proposal out exactly as proposed.
+pub(crate) fn carrying_out(answer: &Answer, when: &str) -> Add {
+    let said = &answer.said;
+    let draw =
+        |line: &domain::book::body::Line| Draw { lot: line.lot, amount: line.amount.clone() };
+    Add {
+        batch: said.batch,
+        proposal: Some(said.proposal),
+        done_at: at(when),
+        captured_at: None,
+        draws: said.lines.iter().map(draw).collect(),
+        carrier_water: said.carrier_water.clone(),
+        preparation: said.preparation,
+        already_done: None,
+    }
 }

@@ -13,7 +13,9 @@ use domain::ledger::entry::Entry;
 use domain::stamp::Stamp;
 
 use crate::bench::at;
-use crate::cellar::{Answer, Cellar, addition_of, body_of, deviation_of, found, quantity};
+use crate::cellar::{
+    Answer, Cellar, addition_of, body_of, carrying_out, deviation_of, found, quantity, reading,
+};
 
 /// Day, gravity, temperature at 08:00 in T-12; the reading at pitching, 09:00, comes before them.
 const MUST_COURSE: &[(&str, &str, &str)] = &[
@@ -87,7 +89,7 @@ pub(crate) fn play_must(cellar: &mut Cellar) -> Must {
     let late = cellar.asks(batch, times, &[("DP-0412", "150 g")], Some("2 L"));
     cellar.signs(&ben, "09-18 14:20", &late).unwrap();
     cellar.clock("09-18 18:05");
-    let mut done = cellar.carrying_out(&late, "09-18 18:05");
+    let mut done = carrying_out(&late, "09-18 18:05");
     done.draws[0].amount = quantity("151 g");
     let late_done = cellar.add(done).unwrap();
     cellar.lot_status("09-19 10:00", "AU-0208", LotStatus::Released, "certificate came");
@@ -100,7 +102,7 @@ fn juice_analysis(cellar: &mut Cellar, batch: BatchId) {
         ("primary_amino_nitrogen", "98", "mg/L"),
         ("sugar", "220", "g/L"),
     ];
-    let mut reading = cellar.reading(batch, "09-08 16:00", &values);
+    let mut reading = reading(batch, "09-08 16:00", &values);
     reading.values[0].expressed_as = Some("NH4".to_owned());
     reading.values[2].expressed_as = Some("glucose and fructose".to_owned());
     reading.laboratory = Some("Example Laboratory".to_owned());
@@ -144,7 +146,7 @@ fn play_wash(cellar: &mut Cellar, typed: &str) -> Wash {
     let opening = mash_in(cellar);
     let batch = cellar.open(opening);
     cellar.clock("09-22 10:00");
-    let mut first = cellar.reading(batch, "09-22 10:00", &[("gravity", "1.0665", "sg_20_20")]);
+    let mut first = reading(batch, "09-22 10:00", &[("gravity", "1.0665", "sg_20_20")]);
     first.values[0].sample_temperature = Some("27.0".to_owned());
     first.values[0].instrument = Some(cellar.instrument("H-1"));
     cellar.take(first);
@@ -177,7 +179,7 @@ fn play_wash(cellar: &mut Cellar, typed: &str) -> Wash {
 
 fn amend_gravity(cellar: &mut Cellar, batch: BatchId, entry: &Entry) {
     let amended_at = cellar.clock("09-23 16:48");
-    let value = cellar.reading(batch, "09-23 16:00", &[("gravity", "1.0465", "sg_20_20")]).values;
+    let value = reading(batch, "09-23 16:00", &[("gravity", "1.0465", "sg_20_20")]).values;
     let amend = Amend {
         target: entry.id,
         effect: AmendTo::Value(0, Box::new(value[0].clone())),
