@@ -213,7 +213,7 @@ mod tests {
         let resolve = ("POST", "/v1/deviations/{id}/resolution");
         for role in Role::ALL {
             let wanted = if role == Quality { Decision::Allowed } else { Decision::Forbidden };
-            assert_eq!(allowed(resolve.0, resolve.1, Some(&[role])), wanted, "{role}");
+            assert_eq!(allowed(resolve.0, resolve.1, Some(&[role])), wanted, "{role:?}");
         }
         assert_eq!(allowed(resolve.0, resolve.1, Some(&[Cellar, Quality])), Decision::Allowed);
         assert_eq!(allowed("POST", "/v1/people", Some(&[Admin])), Decision::Allowed);
