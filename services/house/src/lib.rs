@@ -13,6 +13,7 @@ pub mod ids;
 pub mod passwords;
 pub mod people;
 pub mod permissions;
+pub mod record;
 pub mod roles;
 pub mod secrets;
 pub mod sessions;
