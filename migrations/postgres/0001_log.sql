@@ -5,8 +5,7 @@ create table log_head (
   frontier         bytea  not null,
   root             bytea  not null check (octet_length(root) = 32),
   note             text   not null,
-  last_recorded_at bigint not null,
-  clock_corrected  bigint
+  last_recorded_at bigint not null
 );
 
 create table entry (

@@ -5,8 +5,7 @@ create table log_head (
   frontier         blob    not null,
   root             blob    not null check (length(root) = 32),
   note             text    not null,
-  last_recorded_at integer not null,
-  clock_corrected  integer
+  last_recorded_at integer not null
 ) strict;
 
 -- Not "without rowid": entries of 1 kB made such a table more than three times as large.

@@ -10,6 +10,7 @@ use std::os::unix::fs::{MetadataExt, PermissionsExt};
 use std::path::{Path, PathBuf};
 use std::process::{Command, Stdio};
 use std::sync::atomic::{AtomicU32, Ordering};
+use std::sync::{Arc, Mutex, PoisonError, Weak};
 
 use tempfile::TempDir;
 
@@ -31,7 +32,7 @@ impl Cluster {
         Self::start_with(&[])
     }
 
-    /// The same with further settings, such as `fsync=off`.
+    /// The same with further settings, such as `fsync = off`.
     ///
     /// # Panics
     /// As [`Cluster::start`].
@@ -48,6 +49,21 @@ impl Cluster {
         cluster.write_settings(settings);
         cluster.launch();
         cluster
+    }
+
+    /// The cluster that tests running at the same time share; it ends with the last of them. It does not write
+    /// through to disk: use [`Cluster::start`] where a power cut is played.
+    ///
+    /// # Panics
+    /// As [`Cluster::start`].
+    pub fn shared() -> Arc<Self> {
+        static SHARED: Mutex<Weak<Cluster>> = Mutex::new(Weak::new());
+        let mut shared = SHARED.lock().unwrap_or_else(PoisonError::into_inner);
+        shared.upgrade().unwrap_or_else(|| {
+            let cluster = Arc::new(Self::start_with(&["fsync = off"]));
+            *shared = Arc::downgrade(&cluster);
+            cluster
+        })
     }
 
     /// The port on 127.0.0.1.
@@ -103,6 +119,25 @@ impl Cluster {
         self.control(&["start"]);
     }
 
+    /// Makes the server a standby that can be read from but not written to; it follows nobody.
+    ///
+    /// # Panics
+    /// If it cannot be restarted.
+    pub fn stand_by(&self) {
+        self.control(&["stop", "--mode=fast"]);
+        let mut touch = self.as_server_program(Path::new("touch"));
+        run(touch.arg(self.data().join("standby.signal")));
+        self.launch();
+    }
+
+    /// Makes a standby the primary.
+    ///
+    /// # Panics
+    /// If it is none.
+    pub fn promote(&self) {
+        self.control(&["promote"]);
+    }
+
     fn data(&self) -> PathBuf {
         self.directory.path().join("data")
     }
@@ -147,7 +182,10 @@ impl Cluster {
 
     /// A server program, as a user it agrees to run as.
     fn as_server(&self, program: &str) -> Command {
-        let path = self.programs.join(program);
+        self.as_server_program(&self.programs.join(program))
+    }
+
+    fn as_server_program(&self, path: &Path) -> Command {
         let mut command = if is_root() {
             let mut command = Command::new("setpriv");
             command.args(["--reuid=postgres", "--regid=postgres", "--init-groups"]).arg(path);
@@ -216,7 +254,7 @@ mod tests {
 
     #[test]
     fn a_cluster_answers_and_is_gone_afterwards() {
-        let cluster = Cluster::start_with(&["fsync=off"]);
+        let cluster = Cluster::start_with(&["fsync = off"]);
         let name = cluster.create_database();
         cluster.sql(&name, "create table t (x int); insert into t values (1)");
         let (port, directory) = (cluster.port(), cluster.directory.path().to_owned());

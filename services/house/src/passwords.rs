@@ -214,6 +214,8 @@ mod tests {
         let start = Instant::now();
         assert_eq!(passwords.verify(GOOD, None).await.unwrap(), Verified::No);
         assert!(start.elapsed() > Duration::from_millis(1), "{:?}", start.elapsed());
+        let guessed = Passwords { nobody: stored.into(), ..passwords };
+        assert_eq!(guessed.verify(GOOD, None).await.unwrap(), Verified::No);
     }
 
     #[tokio::test]

@@ -7,7 +7,7 @@ use sqlx::QueryBuilder;
 use uuid::Uuid;
 
 use crate::StoreError;
-use crate::bulk::pieces;
+use crate::bulk::padded;
 use crate::db::{Conn, on};
 use crate::log::unsigned;
 use crate::sites::SiteNumber;
@@ -27,15 +27,15 @@ pub(crate) async fn find(
     ids: &[CommandId],
 ) -> Result<HashMap<CommandId, Earlier>, StoreError> {
     let mut found = HashMap::new();
-    for piece in pieces(ids) {
+    for list in padded(ids) {
         let rows: Vec<(Vec<u8>, i64, i64, Vec<u8>)> = on!(conn, |c| {
             let mut query = QueryBuilder::new(
                 "select command, first_seq, entries, print from command where site = ",
             );
             query.push_bind(site.0).push(" and command in (");
-            let mut list = query.separated(", ");
-            for id in piece {
-                list.push_bind(id.0.as_bytes().as_slice());
+            let mut places = query.separated(", ");
+            for id in &list {
+                places.push_bind(id.0.as_bytes().as_slice());
             }
             query.push(")").build_query_as().fetch_all(c).await?
         });

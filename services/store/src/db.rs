@@ -1,15 +1,16 @@
 //! One database on either engine: two native pools behind an enum, one SQL text for both.
 
+pub(crate) mod server;
+
 use std::fmt;
 use std::path::{Path, PathBuf};
-use std::str::FromStr;
 use std::time::Duration;
 
 use sqlx::pool::PoolConnection;
-use sqlx::postgres::{PgConnectOptions, PgPoolOptions};
 use sqlx::sqlite::{SqliteConnectOptions, SqliteJournalMode, SqlitePoolOptions, SqliteSynchronous};
-use sqlx::{PgConnection, PgPool, Postgres, Sqlite, SqliteConnection, SqlitePool, Transaction};
+use sqlx::{PgConnection, Postgres, Sqlite, SqliteConnection, SqlitePool, Transaction};
 
+pub use self::server::Server;
 use crate::StoreError;
 
 /// How many statement texts a connection keeps prepared: one per table and power of two.
@@ -22,12 +23,22 @@ const PATIENCE: Duration = Duration::from_secs(5);
 const FILE: &str = "book.db";
 
 /// Where a book is kept.
-#[derive(Clone, Debug, Eq, PartialEq)]
+#[derive(Clone, Eq, PartialEq)]
 pub enum Place {
     /// A file in this directory.
     Directory(PathBuf),
-    /// A PostgreSQL server, by address.
+    /// A PostgreSQL server by its address, or several with commas between them, one of which is the primary.
     Url(String),
+}
+
+/// An address may hold a password.
+impl fmt::Debug for Place {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::Directory(directory) => f.debug_tuple("Directory").field(directory).finish(),
+            Self::Url(_) => f.debug_tuple("Url").finish_non_exhaustive(),
+        }
+    }
 }
 
 /// An open database.
@@ -41,7 +52,7 @@ pub enum Db {
         read: SqlitePool,
     },
     /// A server.
-    Postgres(PgPool),
+    Postgres(Server),
 }
 
 /// A connection held for a while.
@@ -101,7 +112,7 @@ impl Db {
     pub async fn open(place: &Place) -> Result<Self, StoreError> {
         match place {
             Place::Directory(directory) => open_file(&directory.join(FILE)).await,
-            Place::Url(url) => open_server(url).await,
+            Place::Url(addresses) => Server::open(addresses).await.map(Self::Postgres),
         }
     }
 
@@ -112,7 +123,7 @@ impl Db {
     pub async fn reader(&self) -> Result<Held, StoreError> {
         Ok(match self {
             Self::Sqlite { read, .. } => Held::Sqlite(read.acquire().await?),
-            Self::Postgres(pool) => Held::Postgres(pool.acquire().await?),
+            Self::Postgres(server) => Held::Postgres(server.acquire().await?),
         })
     }
 
@@ -123,7 +134,7 @@ impl Db {
     pub async fn begin(&self) -> Result<Tx, StoreError> {
         Ok(match self {
             Self::Sqlite { write, .. } => Tx::Sqlite(write.begin_with("begin immediate").await?),
-            Self::Postgres(pool) => Tx::Postgres(pool.begin().await?),
+            Self::Postgres(server) => Tx::Postgres(server.begin("begin").await?),
         })
     }
 
@@ -135,7 +146,7 @@ impl Db {
         const STILL: &str = "begin isolation level repeatable read, read only";
         Ok(match self {
             Self::Sqlite { read, .. } => Tx::Sqlite(read.begin().await?),
-            Self::Postgres(pool) => Tx::Postgres(pool.begin_with(STILL).await?),
+            Self::Postgres(server) => Tx::Postgres(server.begin(STILL).await?),
         })
     }
 
@@ -159,7 +170,7 @@ impl Db {
                 read.close().await;
                 write.close().await;
             }
-            Self::Postgres(pool) => pool.close().await,
+            Self::Postgres(server) => server.pool().close().await,
         }
     }
 }
@@ -221,10 +232,4 @@ async fn open_file(file: &Path) -> Result<Db, StoreError> {
     let write = pool().max_connections(1).connect_with(options.clone()).await?;
     let read = pool().max_connections(8).connect_with(options.read_only(true)).await?;
     Ok(Db::Sqlite { write, read })
-}
-
-async fn open_server(url: &str) -> Result<Db, StoreError> {
-    let options = PgConnectOptions::from_str(url)?.statement_cache_capacity(STATEMENTS);
-    let pool = PgPoolOptions::new().acquire_timeout(PATIENCE).max_connections(16);
-    Ok(Db::Postgres(pool.connect_with(options).await?))
 }

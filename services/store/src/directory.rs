@@ -125,6 +125,17 @@ pub async fn erase(
     Ok(erased == 1)
 }
 
+/// Whether somebody else has the login that would be written.
+pub(crate) async fn is_taken(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    write: &DirectoryWrite,
+) -> Result<bool, StoreError> {
+    let DirectoryWrite::Person(person) = write;
+    let holder = by_login(conn, site, &person.login).await?;
+    Ok(holder.is_some_and(|holder| holder.id != person.person))
+}
+
 /// Writes what a command decided about persons, in the command's own transaction.
 pub(crate) async fn write(
     conn: &mut Conn<'_>,

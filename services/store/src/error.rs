@@ -33,20 +33,28 @@ impl StoreError {
         Self::Inconsistent(what.into())
     }
 
-    /// Whether the server is out of reach, so that trying again at once is useless.
+    /// Whether the server is out of reach, shutting down or a standby, so that only later is another matter.
     pub fn is_unavailable(&self) -> bool {
-        matches!(
-            self,
-            Self::Database(
+        match self {
+            Self::Database(sqlx::Error::Database(told)) => {
+                told.code().is_some_and(|code| PASSING.contains(&code.as_ref()))
+            }
+            Self::Database(error) => matches!(
+                error,
                 sqlx::Error::Io(_)
                     | sqlx::Error::Tls(_)
                     | sqlx::Error::PoolTimedOut
                     | sqlx::Error::PoolClosed
                     | sqlx::Error::WorkerCrashed
-            )
-        )
+            ),
+            _ => false,
+        }
     }
 }
+
+/// PostgreSQL's words for: read-only, shut down by an administrator, crashed, not yet up, too many connections
+/// (its manual, appendix A).
+const PASSING: &[&str] = &["25006", "57P01", "57P02", "57P03", "53300"];
 
 /// An error with all its causes, in one line.
 pub(crate) fn chain(error: &dyn std::error::Error) -> String {

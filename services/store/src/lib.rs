@@ -21,6 +21,8 @@ pub mod rows;
 mod schema;
 pub mod sites;
 pub mod snapshots;
+#[cfg(test)]
+mod tests;
 pub mod tiles;
 pub mod verify;
 pub mod writer;

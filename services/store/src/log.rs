@@ -1,4 +1,6 @@
-//! The log's own tables: the head, the entries, the blobs and the heads that left the house.
+//! The log itself: its entries, and in [`head`](mod@head) how far it has come.
+
+pub mod head;
 
 use std::collections::HashMap;
 
@@ -6,29 +8,15 @@ use domain::book::Sealed;
 use domain::book::subject::Subject;
 use domain::ids::EntryId;
 use domain::ledger::entry::Entry;
-use domain::ledger::tree::{Frontier, Hash};
-use domain::stamp::Micros;
+use domain::ledger::tree::Hash;
 use sqlx::QueryBuilder;
 
+pub use self::head::{Head, KeptHead, head, keep_head, kept_heads};
+pub(crate) use self::head::{lock_head, put_head, start};
 use crate::StoreError;
-use crate::bulk::pieces;
+use crate::bulk::{padded, pieces};
 use crate::db::{Conn, on};
 use crate::sites::SiteNumber;
-
-/// How far a log has come, as stored.
-#[derive(Clone, Debug, Eq, PartialEq)]
-pub struct Head {
-    /// The tree's right edge, which knows the size and the root.
-    pub frontier: Frontier,
-    /// The root as stored.
-    pub root: Hash,
-    /// Size and root, signed; empty before the first entry.
-    pub note: String,
-    /// When the last entry was recorded.
-    pub last_recorded_at: Micros,
-    /// The clock's time when an operator last declared it right, as long as it is behind the log.
-    pub clock_corrected: Option<Micros>,
-}
 
 /// An entry as stored.
 #[derive(Clone, Debug, Eq, PartialEq)]
@@ -52,29 +40,8 @@ impl Stored {
     }
 }
 
-/// A head that left the house.
-#[derive(Clone, Debug, Eq, PartialEq)]
-pub struct KeptHead {
-    /// The log's size then.
-    pub size: u64,
-    /// Its root then.
-    pub root: Hash,
-    /// Both, signed.
-    pub note: String,
-}
-
-type HeadRow = (i64, Vec<u8>, Vec<u8>, String, i64, Option<i64>);
 type EntryRow = (i64, Vec<u8>, Vec<u8>);
 
-const START: &str = "insert into log_head (site, size, frontier, root, note, last_recorded_at) \
-    values ($1, 0, $2, $3, '', 0)";
-const HEAD: &str = "select size, frontier, root, note, last_recorded_at, clock_corrected \
-    from log_head where site = $1";
-/// Changes nothing, but holds the row until the transaction ends: PostgreSQL's other writers wait here.
-const LOCK_HEAD: &str = "update log_head set size = size where site = $1 \
-    returning size, frontier, root, note, last_recorded_at, clock_corrected";
-const PUT_HEAD: &str = "update log_head set size = $2, frontier = $3, root = $4, note = $5, \
-    last_recorded_at = $6, clock_corrected = $7 where site = $1";
 const ENTRY: &str = "select seq, bytes, leaf_hash from entry where site = $1 and seq = $2";
 const ENTRY_BY_ID: &str = "select e.seq, e.bytes, e.leaf_hash from entry_index i \
     join entry e on e.site = i.site and e.seq = i.seq where i.site = $1 and i.id = $2";
@@ -84,119 +51,11 @@ const ENTRIES_OF: &str = "select s.n, e.seq, e.bytes, e.leaf_hash from subject_e
     join entry e on e.site = s.site and e.seq = s.seq \
     where s.site = $1 and s.subject = $2 and s.n > $3 order by s.n limit $4";
 const COUNT_OF: &str = "select n from subject where site = $1 and subject = $2";
-const KEEP_HEAD: &str = "insert into signed_head (site, size, root, note) values ($1, $2, $3, $4) \
-    on conflict (site, size) do nothing";
-const KEPT: &str = "select size, root, note from signed_head where site = $1 order by size";
-const IS_KEPT: &str = "select count(*) from signed_head where site = $1 and size = $2";
 const LEAF_HASHES: &str = "select leaf_hash from entry \
     where site = $1 and seq >= $2 and seq < $3 order by seq";
 
 #[cfg(test)]
-pub(crate) const TEXTS: &[&str] = &[
-    START,
-    HEAD,
-    LOCK_HEAD,
-    PUT_HEAD,
-    ENTRY,
-    ENTRY_BY_ID,
-    ENTRIES,
-    ENTRIES_OF,
-    COUNT_OF,
-    KEEP_HEAD,
-    KEPT,
-    IS_KEPT,
-    LEAF_HASHES,
-];
-
-/// An empty log.
-pub(crate) async fn start(conn: &mut Conn<'_>, site: SiteNumber) -> Result<(), StoreError> {
-    let empty = Frontier::default();
-    on!(conn, |c| sqlx::query(START)
-        .bind(site.0)
-        .bind(empty.to_bytes())
-        .bind(empty.root().as_bytes().as_slice())
-        .execute(c)
-        .await
-        .map(drop))?;
-    Ok(())
-}
-
-/// How far the log has come.
-///
-/// # Errors
-/// [`StoreError::Inconsistent`] if the site has no head, or [`StoreError::Database`].
-pub async fn head(conn: &mut Conn<'_>, site: SiteNumber) -> Result<Head, StoreError> {
-    let row: Option<HeadRow> =
-        on!(conn, |c| sqlx::query_as(HEAD).bind(site.0).fetch_optional(c).await)?;
-    head_of(site, row)
-}
-
-/// The same, and nobody else writes to this log until the transaction ends.
-pub(crate) async fn lock_head(conn: &mut Conn<'_>, site: SiteNumber) -> Result<Head, StoreError> {
-    let row: Option<HeadRow> =
-        on!(conn, |c| sqlx::query_as(LOCK_HEAD).bind(site.0).fetch_optional(c).await)?;
-    head_of(site, row)
-}
-
-pub(crate) async fn put_head(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    head: &Head,
-) -> Result<(), StoreError> {
-    let changed = on!(conn, |c| sqlx::query(PUT_HEAD)
-        .bind(site.0)
-        .bind(signed(head.frontier.size())?)
-        .bind(head.frontier.to_bytes())
-        .bind(head.root.as_bytes().as_slice())
-        .bind(head.note.as_str())
-        .bind(head.last_recorded_at.0)
-        .bind(head.clock_corrected.map(|at| at.0))
-        .execute(c)
-        .await?
-        .rows_affected());
-    if changed == 1 { Ok(()) } else { Err(StoreError::inconsistent("the head's row is gone")) }
-}
-
-/// Keeps a head that leaves the house.
-///
-/// # Errors
-/// [`StoreError::Database`].
-pub async fn keep_head(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    head: &KeptHead,
-) -> Result<(), StoreError> {
-    let length = signed(head.size)?;
-    let kept: i64 =
-        on!(conn, |c| sqlx::query_scalar(IS_KEPT).bind(site.0).bind(length).fetch_one(c).await)?;
-    if kept == 0 {
-        on!(conn, |c| sqlx::query(KEEP_HEAD)
-            .bind(site.0)
-            .bind(length)
-            .bind(head.root.as_bytes().as_slice())
-            .bind(head.note.as_str())
-            .execute(c)
-            .await
-            .map(drop))?;
-    }
-    Ok(())
-}
-
-/// Every head that left the house, the oldest first.
-///
-/// # Errors
-/// [`StoreError`].
-pub async fn kept_heads(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-) -> Result<Vec<KeptHead>, StoreError> {
-    let rows: Vec<(i64, Vec<u8>, String)> =
-        on!(conn, |c| sqlx::query_as(KEPT).bind(site.0).fetch_all(c).await)?;
-    let kept = |(size, root, note): (i64, Vec<u8>, String)| {
-        Ok(KeptHead { size: unsigned(size)?, root: hash(&root)?, note })
-    };
-    rows.into_iter().map(kept).collect()
-}
+pub(crate) const TEXTS: &[&str] = &[ENTRY, ENTRY_BY_ID, ENTRIES, ENTRIES_OF, COUNT_OF, LEAF_HASHES];
 
 /// One entry by its number.
 ///
@@ -305,13 +164,13 @@ pub(crate) async fn counts(
     subjects: &[Subject],
 ) -> Result<HashMap<Subject, u64>, StoreError> {
     let mut found = HashMap::new();
-    for piece in pieces(subjects) {
+    for list in padded(subjects) {
         let rows: Vec<(Vec<u8>, i64)> = on!(conn, |c| {
             let mut query = QueryBuilder::new("select subject, n from subject where site = ");
             query.push_bind(site.0).push(" and subject in (");
-            let mut list = query.separated(", ");
-            for subject in piece {
-                list.push_bind(subject.key().to_vec());
+            let mut places = query.separated(", ");
+            for subject in &list {
+                places.push_bind(subject.key().to_vec());
             }
             query.push(")").build_query_as().fetch_all(c).await?
         });
@@ -363,20 +222,6 @@ pub(crate) async fn append(
         query.build().execute(&mut *c).await?;
     });
     Ok(())
-}
-
-fn head_of(site: SiteNumber, row: Option<HeadRow>) -> Result<Head, StoreError> {
-    let (length, frontier, root, note, last_recorded_at, clock_corrected) =
-        row.ok_or_else(|| StoreError::inconsistent(format!("site {} has no head", site.0)))?;
-    let frontier = Frontier::from_bytes(unsigned(length)?, &frontier)
-        .map_err(|e| StoreError::inconsistent(e.to_string()))?;
-    Ok(Head {
-        frontier,
-        root: hash(&root)?,
-        note,
-        last_recorded_at: Micros(last_recorded_at),
-        clock_corrected: clock_corrected.map(Micros),
-    })
 }
 
 fn stored((seq, bytes, leaf_hash): EntryRow) -> Result<Stored, StoreError> {

@@ -6,7 +6,7 @@
 use sqlx::migrate::Migrator;
 
 use crate::db::{Conn, Db, on};
-use crate::{StoreError, rebuild, schema, sites};
+use crate::{StoreError, log, rebuild, schema, sites};
 
 /// The role under which the program serves on PostgreSQL. It is made without the right to log in: the operator
 /// gives it one (`alter role tallystave_app login password …`) or makes a login role a member of it.
@@ -22,14 +22,16 @@ static POSTGRES: Migrator = sqlx::migrate!("../../migrations/postgres");
 pub async fn migrate(db: &Db) -> Result<(), StoreError> {
     match db {
         Db::Sqlite { write, .. } => SQLITE.run(write).await?,
-        Db::Postgres(pool) => POSTGRES.run(pool).await?,
+        Db::Postgres(server) => POSTGRES.run(server.pool()).await?,
     }
     let mut tx = db.begin().await?;
+    only_one(&mut tx.conn()).await?;
     grant(&mut tx.conn()).await?;
     if !schema::is_current(&mut tx.conn()).await? {
         schema::make_anew(&mut tx.conn()).await?;
         for site in sites::all(&mut tx.conn()).await? {
             tracing::info!(site = site.code, "filling the projections from the log");
+            log::lock_head(&mut tx.conn(), site.number).await?;
             rebuild::rewrite(&mut tx.conn(), &site).await?;
         }
     }
@@ -54,6 +56,9 @@ pub async fn check(db: &Db) -> Result<(), StoreError> {
 
 const APPLIED: &str = "select version from _sqlx_migrations where success order by version";
 
+#[cfg(test)]
+pub(crate) const TEXTS: &[&str] = &[APPLIED];
+
 /// A database without our tables was never migrated.
 fn missing(error: sqlx::Error) -> StoreError {
     match error {
@@ -64,6 +69,15 @@ fn missing(error: sqlx::Error) -> StoreError {
 
 fn versions(migrator: &Migrator) -> Vec<i64> {
     migrator.iter().map(|step| step.version).collect()
+}
+
+/// Several servers may start at once: the others wait here, and find the work done.
+async fn only_one(conn: &mut Conn<'_>) -> Result<(), StoreError> {
+    if let Conn::Postgres(c) = conn {
+        const LOCK: &str = "lock table projection_version in share row exclusive mode";
+        sqlx::raw_sql(LOCK).execute(&mut **c).await?;
+    }
+    Ok(())
 }
 
 /// Gives the serving role exactly its rights. The file of SQLite has no roles: there the hash tree alone guards.
@@ -85,7 +99,7 @@ const GRANTS: &[&str] = &[
      end $$",
     "grant usage on schema public to tallystave_app",
     "grant select, insert on entry, tile, blob, signed_head, log_head, site to tallystave_app",
-    "grant update (size, frontier, root, note, last_recorded_at, clock_corrected) on log_head to tallystave_app",
+    "grant update (size, frontier, root, note, last_recorded_at) on log_head to tallystave_app",
     "grant select, insert, update, delete on directory_person, founding_token to tallystave_app",
     "grant select on _sqlx_migrations, projection_version to tallystave_app",
 ];

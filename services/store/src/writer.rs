@@ -7,6 +7,7 @@
 
 mod bench;
 mod clock;
+mod drawn;
 mod group;
 mod sheet;
 

@@ -61,7 +61,7 @@ impl Walk {
         if entry.recorded_at < self.last_recorded_at {
             return Err(Fault::at(seq, "it was recorded before the entry before it"));
         }
-        self.last_recorded_at = entry.recorded_at;
+        self.last_recorded_at = corrected_clock(&entry)?.unwrap_or(entry.recorded_at);
         self.count(&entry)?;
         self.note_key(&entry)?;
         self.note_documents(&entry);
@@ -181,4 +181,13 @@ impl Walk {
             Err(Fault::of_log("what was signed is not the tree of the entries"))
         }
     }
+}
+
+/// What a correction of the clock says: later entries may be recorded from then on, earlier than those before.
+fn corrected_clock(entry: &Entry) -> Result<Option<Micros>, Fault> {
+    if entry.kind != "clock.corrected" {
+        return Ok(None);
+    }
+    let text = entry.body.get("clock").and_then(serde_json::Value::as_str).unwrap_or_default();
+    Micros::parse(text).map(Some).map_err(|error| Fault::at(entry.seq, error))
 }

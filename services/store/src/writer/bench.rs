@@ -4,21 +4,22 @@ use std::collections::{HashMap, HashSet};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::Arc;
 
-use domain::book::command::{Act, Command, Decision, Need, Stop};
+use domain::book::command::{Act, Command, Decision, Need, Refusal, Stop};
 use domain::book::subject::Subject;
 use domain::book::{Desk, Loaded};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::TreeHead;
 use domain::stamp::Micros;
 
+use super::drawn::Drawn;
 use super::sheet::Sheet;
-use super::{Answer, Receipt, Tools, WriteError};
+use super::{Answer, Receipt, Tools, WriteError, clock};
 use crate::commands::{self, Earlier};
 use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Conn, StoreError, log, tiles};
+use crate::{Conn, StoreError, directory, log, tiles};
 
 /// How often one command may ask for more before its decision counts as failed.
 const ROUNDS: usize = 64;
@@ -128,21 +129,24 @@ impl Bench {
             return Ok(answer);
         }
         let is_correction = matches!(command.act, Act::CorrectClock(_));
-        let now = (tools.clock)();
-        let recorded = match sheet.clock.next(now, is_correction) {
+        let last = sheet.position.last_recorded_at;
+        let recorded = match clock::next(last, (tools.clock)(), is_correction) {
             Ok(recorded) => recorded,
             Err(behind) => return Ok(Err(behind)),
         };
+        let mut drawn = Drawn::new(&*tools.draw);
         for _ in 0..ROUNDS {
-            let mut draw = || (tools.draw)();
+            let mut draw = drawn.anew();
             let desk = &self.desk;
             let outcome =
                 catch_unwind(AssertUnwindSafe(|| desk.decide(command, recorded, &mut draw)));
             match outcome {
                 Ok(Ok(decision)) => {
-                    let answer = self.append(sheet, command, decision, recorded)?;
-                    sheet.tick(now, is_correction);
-                    return Ok(Ok(answer));
+                    if self.is_login_taken(conn, sheet, &decision).await? {
+                        let refusal = Refusal::conflict("somebody else signs in with this login");
+                        return Ok(Err(WriteError::Refused(refusal)));
+                    }
+                    return Ok(Ok(self.append(sheet, command, decision, recorded)?));
                 }
                 Ok(Err(Stop::Refused(refusal))) => return Ok(Err(WriteError::Refused(refusal))),
                 Ok(Err(Stop::Need(needs))) => {
@@ -152,6 +156,21 @@ impl Bench {
             }
         }
         Ok(Err(WriteError::Failed("its decision does not come to an end".to_owned())))
+    }
+
+    /// The book does not know the directory's logins, so they are looked up here.
+    async fn is_login_taken(
+        &self,
+        conn: &mut Conn<'_>,
+        sheet: &Sheet,
+        decision: &Decision,
+    ) -> Result<bool, StoreError> {
+        for write in &decision.directory {
+            if sheet.has_login(write) || directory::is_taken(conn, self.site.number, write).await? {
+                return Ok(true);
+            }
+        }
+        Ok(false)
     }
 
     /// Appends a decision. After an error the desk is in disorder, and the group must be given up.

@@ -11,9 +11,7 @@ use domain::book::{Appended, Desk, Position, Sealed};
 use domain::ids::{CommandId, EntryId};
 use domain::ledger::tiles::Edge;
 use domain::ledger::tree::{Hash, TreeHead};
-use domain::stamp::Micros;
 
-use super::clock::Clock;
 use super::{Receipt, Tools, WriteError};
 use crate::log::{self, Head};
 use crate::projections::Pending;
@@ -22,7 +20,6 @@ use crate::{Conn, StoreError, blobs, directory, read, tiles};
 
 pub(super) struct Sheet {
     pub(super) position: Position,
-    pub(super) clock: Clock,
     /// Subjects on the desk, all of them held against the locked counters.
     pub(super) subjects: HashSet<Subject>,
     entries: Vec<Sealed>,
@@ -42,7 +39,6 @@ impl Sheet {
                 frontier: head.frontier,
                 last_recorded_at: head.last_recorded_at,
             },
-            clock: Clock { last: head.last_recorded_at, corrected: head.clock_corrected },
             subjects: HashSet::new(),
             entries: Vec::new(),
             by_id: HashMap::new(),
@@ -104,14 +100,17 @@ impl Sheet {
         Ok(true)
     }
 
+    /// Whether this group gives the login to somebody else.
+    pub(super) fn has_login(&self, write: &DirectoryWrite) -> bool {
+        let DirectoryWrite::Person(new) = write;
+        self.directory.iter().any(|DirectoryWrite::Person(other)| {
+            other.login == new.login && other.person != new.person
+        })
+    }
+
     /// How many entries wait to be written.
     pub(super) const fn len(&self) -> usize {
         self.entries.len()
-    }
-
-    /// Takes note of when an entry was recorded.
-    pub(super) fn tick(&mut self, now: Micros, was_correction: bool) {
-        self.clock = self.clock.after(now, self.position.last_recorded_at, was_correction);
     }
 
     /// Writes it all; the head comes last.
@@ -141,7 +140,6 @@ impl Sheet {
             root: head.root,
             note,
             last_recorded_at: self.position.last_recorded_at,
-            clock_corrected: self.clock.corrected,
         };
         log::put_head(conn, site.number, &row).await?;
         Ok(head)

@@ -1,0 +1,133 @@
+//! A PostgreSQL server, or several of which one at a time is the primary.
+//!
+//! The driver knows neither several hosts nor which of them may write. So each connection is asked before it is used,
+//! and when none can be had, the hosts are asked in turn and the pool is pointed at the primary.
+
+use std::str::FromStr;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
+use std::time::Duration;
+
+use sqlx::pool::PoolConnection;
+use sqlx::postgres::{PgConnectOptions, PgPoolOptions};
+use sqlx::{Connection as _, PgConnection, PgPool, Postgres, Transaction};
+use tokio::sync::Mutex;
+
+use super::{PATIENCE, STATEMENTS};
+use crate::StoreError;
+
+/// Connections at most.
+const CONNECTIONS: u32 = 16;
+
+/// How long one host is given to answer.
+const HOST_PATIENCE: Duration = Duration::from_secs(2);
+
+const IS_PRIMARY: &str = "select not pg_is_in_recovery()";
+
+#[cfg(test)]
+pub(crate) const TEXTS: &[&str] = &[IS_PRIMARY];
+
+/// A pool of connections to whichever host is the primary.
+#[derive(Clone, Debug)]
+pub struct Server {
+    pool: PgPool,
+    hosts: Arc<Hosts>,
+}
+
+#[derive(Debug)]
+struct Hosts {
+    all: Vec<PgConnectOptions>,
+    /// How often the pool was pointed at a primary.
+    turns: AtomicU64,
+    seeking: Mutex<()>,
+}
+
+impl Server {
+    /// Connects; several addresses stand with commas between them.
+    pub(super) async fn open(addresses: &str) -> Result<Self, StoreError> {
+        let all = addresses
+            .split(',')
+            .map(|url| Ok(PgConnectOptions::from_str(url)?.statement_cache_capacity(STATEMENTS)))
+            .collect::<Result<Vec<_>, sqlx::Error>>()?;
+        let primary = find_primary(&all).await?;
+        let patience = if all.len() == 1 { PATIENCE } else { HOST_PATIENCE };
+        let pool = PgPoolOptions::new()
+            .max_connections(CONNECTIONS)
+            .acquire_timeout(patience)
+            .test_before_acquire(false)
+            .before_acquire(|conn, _| Box::pin(async move { is_primary(conn).await }))
+            .connect_lazy_with(primary);
+        let hosts = Hosts { all, turns: AtomicU64::new(0), seeking: Mutex::new(()) };
+        Ok(Self { pool, hosts: Arc::new(hosts) })
+    }
+
+    pub(super) async fn acquire(&self) -> Result<PoolConnection<Postgres>, StoreError> {
+        let turn = self.turn();
+        match self.pool.acquire().await.map_err(StoreError::from) {
+            Err(error) if error.is_unavailable() => {
+                self.seek_primary(turn).await?;
+                Ok(self.pool.acquire().await?)
+            }
+            outcome => outcome,
+        }
+    }
+
+    pub(super) async fn begin(
+        &self,
+        text: &'static str,
+    ) -> Result<Transaction<'static, Postgres>, StoreError> {
+        let turn = self.turn();
+        match self.pool.begin_with(text).await.map_err(StoreError::from) {
+            Err(error) if error.is_unavailable() => {
+                self.seek_primary(turn).await?;
+                Ok(self.pool.begin_with(text).await?)
+            }
+            outcome => outcome,
+        }
+    }
+
+    /// The connections, for what this crate does not offer.
+    pub const fn pool(&self) -> &PgPool {
+        &self.pool
+    }
+
+    fn turn(&self) -> u64 {
+        self.hosts.turns.load(Ordering::Acquire)
+    }
+
+    /// Points the pool at the primary, unless somebody did so since `turn`.
+    async fn seek_primary(&self, turn: u64) -> Result<(), StoreError> {
+        let _only_one = self.hosts.seeking.lock().await;
+        if self.turn() == turn {
+            let primary = find_primary(&self.hosts.all).await?;
+            self.pool.set_connect_options(primary);
+            self.hosts.turns.fetch_add(1, Ordering::Release);
+        }
+        Ok(())
+    }
+}
+
+/// The first host that answers and may write.
+async fn find_primary(hosts: &[PgConnectOptions]) -> Result<PgConnectOptions, StoreError> {
+    let mut last = sqlx::Error::PoolTimedOut;
+    for host in hosts {
+        match tokio::time::timeout(HOST_PATIENCE, ask(host)).await {
+            Ok(Ok(true)) => return Ok(host.clone()),
+            Ok(Ok(false)) => last = std::io::Error::other("the server is a standby").into(),
+            Ok(Err(error)) => last = error,
+            Err(_) => last = sqlx::Error::PoolTimedOut,
+        }
+    }
+    Err(last.into())
+}
+
+async fn ask(host: &PgConnectOptions) -> Result<bool, sqlx::Error> {
+    let mut conn = PgConnection::connect_with(host).await?;
+    let answer = is_primary(&mut conn).await?;
+    conn.close().await?;
+    Ok(answer)
+}
+
+async fn is_primary(conn: &mut PgConnection) -> Result<bool, sqlx::Error> {
+    sqlx::query_scalar(IS_PRIMARY).fetch_one(conn).await
+}
