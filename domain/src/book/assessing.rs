@@ -40,6 +40,21 @@ pub struct Question {
     pub actor: Actor,
 }
 
+impl Question {
+    /// Nothing is to go in: how does the batch stand?
+    pub const fn nothing(batch: BatchId, at: Micros, actor: Actor) -> Self {
+        Self {
+            batch,
+            at,
+            draws: Vec::new(),
+            carrier_water: None,
+            preparation: body::Preparation::AsDelivered,
+            already_done: false,
+            actor,
+        }
+    }
+}
+
 /// An answer found on a snapshot, with the running numbers it was found on.
 #[derive(Clone, Debug)]
 pub struct Prepared {

@@ -219,12 +219,15 @@ impl Desk {
     ) -> Result<Decision, Stop> {
         if let Some((subject, n)) = command.expects {
             let current = self.subject(subject)?.n;
+            if current == 0 {
+                return Err(Refusal::unknown(subject.kind.name()).into());
+            }
             if current != n {
                 return Err(Refusal {
                     kind: super::command::RefusalKind::Stale,
                     pointer: None,
                     detail: format!(
-                        "the {} has {current} entries now, not {n}: look at it again, then repeat with its new ETag",
+                        "the {} now stands at ETag \"{current}\": look at it again, then repeat with that",
                         subject.kind.name()
                     ),
                 }

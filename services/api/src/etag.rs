@@ -32,6 +32,12 @@ struct Tag {
 }
 
 impl IfMatch {
+    /// The running number the client saw, if the thing still stands there; otherwise one that nothing ever has, so that
+    /// the writer, who alone can tell a repeat from a late change, refuses what is not a repeat.
+    pub fn seen(&self, n: u64) -> u64 {
+        if self.check(n).is_ok() { n } else { u64::MAX }
+    }
+
     /// Whether the thing still stands at the number the client saw.
     ///
     /// # Errors

@@ -13,6 +13,8 @@ pub mod ids;
 pub mod passwords;
 pub mod people;
 pub mod permissions;
+pub mod reading;
+pub mod record;
 pub mod roles;
 pub mod secrets;
 pub mod sessions;

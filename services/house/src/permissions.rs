@@ -62,7 +62,6 @@ pub const TABLE: &[Row] = &[
     // People.
     row("GET", "/v1/people", Who::Roles(&[Quality, Admin, Auditor])),
     row("POST", "/v1/people", ADMIN),
-    row("GET", "/v1/people/{id}/roles/{role}", ADMIN),
     row("PUT", "/v1/people/{id}/roles/{role}", ADMIN),
     row("DELETE", "/v1/people/{id}/roles/{role}", ADMIN),
     // The site's rules.

@@ -1,2 +1,55 @@
+//! The program: command line, configuration, start-up and shutdown.
 #![forbid(unsafe_code)]
-fn main() {}
+
+mod check;
+mod config;
+mod demo;
+mod serve;
+
+use std::process::ExitCode;
+
+use clap::Parser as _;
+use house::clock::Clock;
+
+use crate::config::{Cli, Command, FoundingLink};
+
+#[tokio::main]
+async fn main() -> ExitCode {
+    tracing_subscriber::fmt()
+        .with_env_filter(
+            tracing_subscriber::EnvFilter::try_from_env("TALLYSTAVE_LOG")
+                .unwrap_or_else(|_| "warn,sqlx=error".into()),
+        )
+        .with_writer(std::io::stderr)
+        .init();
+    match run(Cli::parse().command).await {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("tallystave: {error:#}");
+            ExitCode::FAILURE
+        }
+    }
+}
+
+async fn run(command: Command) -> anyhow::Result<()> {
+    match command {
+        Command::Serve(serve) => serve::serve(serve).await,
+        Command::Migrate(book) => check::migrate(&book).await,
+        Command::Verify(book) => check::verify(&book).await,
+        Command::Rebuild(rebuild) => check::rebuild(&rebuild).await,
+        Command::FoundingLink(link) => founding_link(link).await,
+        Command::Openapi => {
+            println!("{}", api::document().to_pretty_json()?);
+            Ok(())
+        }
+        Command::Demo(demo) => demo::run(demo).await,
+    }
+}
+
+async fn founding_link(link: FoundingLink) -> anyhow::Result<()> {
+    let house = serve::open(&link.book, Clock::System).await?;
+    let token = house.founding_token().await?;
+    println!("{}/v1/founding#{token}", link.public_url);
+    house.close().await;
+    Ok(())
+}

@@ -1,0 +1,52 @@
+//! From a request to something the house can be asked: the key, the fingerprint, the caller.
+
+use domain::book::command::Act;
+use domain::book::subject::Subject;
+use domain::ids::CommandId;
+use domain::ledger::canonical::digest;
+use house::Asked;
+use serde_json::{Value, json};
+
+use crate::caller::Caller;
+use crate::problem::{Kind, Problem};
+
+/// SHA-256 over what was asked: method, path and body in canonical form, secrets left out.
+///
+/// # Errors
+/// [`Kind::NotReadable`] if the body holds what the ledger's form forbids.
+pub(crate) fn print(method: &str, path: &str, body: &Value) -> Result<[u8; 32], Problem> {
+    let asked = json!({"method": method, "path": path, "body": body});
+    let digest =
+        digest(&asked).map_err(|error| Problem::new(Kind::NotReadable, error.to_string()))?;
+    Ok(*digest.as_bytes())
+}
+
+/// The body without these members.
+pub(crate) fn without(mut body: Value, secrets: &[&str]) -> Value {
+    if let Some(members) = body.as_object_mut() {
+        for secret in secrets {
+            members.remove(*secret);
+        }
+    }
+    body
+}
+
+/// Something asked by a caller under a key.
+pub(crate) fn asked(caller: &Caller, key: CommandId, print: [u8; 32], act: Act) -> Asked {
+    Asked { caller: caller.into(), key, print, expects: None, act }
+}
+
+/// The same, only if the subject has not moved on.
+pub(crate) fn expecting(asked: Asked, subject: impl Into<Subject>, n: u64) -> Asked {
+    Asked { expects: Some((subject.into(), n)), ..asked }
+}
+
+impl From<&Caller> for house::Caller {
+    fn from(caller: &Caller) -> Self {
+        Self {
+            person: caller.person,
+            site: caller.site,
+            roles: caller.roles.iter().copied().collect(),
+        }
+    }
+}

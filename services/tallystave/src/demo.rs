@@ -1,0 +1,3 @@
+pub(crate) async fn run(_: crate::config::Demo) -> anyhow::Result<()> {
+    Ok(())
+}
