@@ -22,7 +22,7 @@ impl Pending {
     /// Adds changes after those already there.
     ///
     /// # Errors
-    /// [`StoreError::Inconsistent`] if a row does not fit its table.
+    /// [`StoreError::Inconsistent`] if a row does not fit its table, or the table is none of the book's.
     pub(crate) fn add(
         &mut self,
         changes: impl IntoIterator<Item = Change>,
@@ -32,6 +32,9 @@ impl Pending {
                 Change::Put(row) => (row.table, checked_key(row)?),
                 Change::Remove { table, key } => (*table, key.clone()),
             };
+            if !self.tables.contains_key(table.name) && !tables().contains(&table) {
+                return Err(StoreError::inconsistent(format!("no table {} is kept", table.name)));
+            }
             self.tables.entry(table.name).or_default().insert(key, change);
         }
         Ok(())
@@ -179,4 +182,39 @@ async fn remove(
         query.push(")").build().execute(c).await?;
     });
     Ok(())
+}
+
+#[cfg(test)]
+mod tests {
+    use domain::book::tables::SETTING;
+
+    use super::*;
+
+    static STRAY: Table = Table { name: "stray", columns: SETTING.columns, key: 1, indexes: &[] };
+
+    fn put(table: &'static Table, cells: Vec<Cell>) -> Change {
+        Change::Put(Row { table, cells })
+    }
+
+    #[test]
+    fn of_several_changes_to_a_row_the_last_counts() {
+        let mut pending = Pending::default();
+        let key = || vec![Cell::from("a")];
+        pending.add([put(&SETTING, vec!["a".into(), "1".into()])]).unwrap();
+        pending.add([Change::Remove { table: &SETTING, key: key() }]).unwrap();
+        assert_eq!(pending.rows("setting").count(), 0);
+        let last = put(&SETTING, vec!["a".into(), "2".into()]);
+        pending.add([last.clone()]).unwrap();
+        assert_eq!(pending.find("setting", &key()), Some(&last));
+    }
+
+    #[test]
+    fn what_fits_no_table_is_refused() {
+        let mut pending = Pending::default();
+        let mut add = |change| pending.add([change]).is_err();
+        assert!(add(put(&STRAY, vec!["a".into(), "1".into()])), "no such table");
+        assert!(add(put(&SETTING, vec!["a".into()])), "too few cells");
+        assert!(add(put(&SETTING, vec!["a".into(), Cell::Null])), "an empty cell");
+        assert!(add(put(&SETTING, vec!["a".into(), Cell::Int(1)])), "another kind");
+    }
 }
