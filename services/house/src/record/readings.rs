@@ -32,8 +32,8 @@ impl Evidence {
     fn row(&self, told: &Told, body: &ReadingTaken, index: usize) -> records::Reading {
         let value = body.values.get(index);
         let known = value.or_else(|| {
-            let before = told.read.amendments.iter().rev();
-            before.filter_map(|a| reading_taken(&a.was.1)?.values.get(index)).next()
+            let mut before = told.read.amendments.iter().rev();
+            before.find_map(|a| reading_taken(&a.was.1)?.values.get(index))
         });
         let mut row = records::Reading {
             n: told.n,
@@ -126,7 +126,7 @@ impl Evidence {
     fn dosed(&self, told: &Told, body: &AdditionRecorded) -> AccountRow {
         let lines: Vec<_> = body.lines.iter().map(checks_line).collect();
         let liquid = self.opening().map_or(0, |(_, opened)| {
-            let planned = opened.liquid_planned.as_ref().map_or(0, |planned| planned.base());
+            let planned = opened.liquid_planned.as_ref().map_or(0, domain::units::Quantity::base);
             if opened.liquid.base() > 0 { opened.liquid.base() } else { planned }
         });
         let [ammonium_n, amino_n] = match checks::nitrogen_mg_l(&lines, liquid) {

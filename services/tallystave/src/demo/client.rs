@@ -50,7 +50,7 @@ impl Client {
         self.send("POST", path, Some(body), &[("Idempotency-Key", &key)])
     }
 
-    /// Records something that needs the ETag last seen.
+    /// Records something that needs the `ETag` last seen.
     pub(super) fn post_if(&self, path: &str, etag: &str, body: &Value) -> anyhow::Result<Value> {
         let key = new_key()?;
         let headers = [("Idempotency-Key", key.as_str()), ("If-Match", etag)];

@@ -121,16 +121,13 @@ fn materials() -> Vec<Value> {
     ]
 }
 
+/// When, lot, material, supplier, how much.
+type Receipt =
+    (&'static str, &'static str, &'static str, Option<&'static str>, &'static str, &'static str);
+
 /// The lots of the scenario, at their times.
 pub(super) fn receipts(events: &mut Events) {
-    let lots: [(
-        &'static str,
-        &'static str,
-        &'static str,
-        Option<&'static str>,
-        &'static str,
-        &'static str,
-    ); 9] = [
+    let lots: [Receipt; 9] = [
         ("2025-06-02T09:00:00-07:00", "DP-0387", "DAP", Some("NUT"), "500", "g"),
         ("2025-09-08T08:00:00-07:00", "DP-0412", "DAP", Some("NUT"), "25000", "g"),
         ("2025-09-08T08:05:00-07:00", "AU-0208", "AUTO", Some("NUT"), "10000", "g"),
