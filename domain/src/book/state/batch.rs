@@ -106,8 +106,13 @@ impl BatchState {
             Body::ReadingTaken(body) if body.batch == self.batch => self.read(entry, body),
             Body::AdditionRecorded(body) if body.batch == self.batch => self.add(entry, body),
             Body::ProposalAssessed(body) if body.batch == self.batch => {
+                // Told to the minute, the addition may have happened just before it was asked for.
+                let done_by = self
+                    .additions()
+                    .find(|(_, addition)| addition.proposal == Some(body.proposal))
+                    .map(|(addition, _)| addition.seq);
                 let state =
-                    ProposalState { entry: Arc::clone(entry), signoffs: Vec::new(), done_by: None };
+                    ProposalState { entry: Arc::clone(entry), signoffs: Vec::new(), done_by };
                 self.proposals.insert(body.proposal, state);
             }
             Body::SignoffGiven(body) => {
