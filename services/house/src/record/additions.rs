@@ -178,7 +178,7 @@ impl Evidence {
         };
         if let Some(fate) = told.fate() {
             let by = told.read.amendments.last();
-            row.resolved_at = fate.to_owned();
+            fate.clone_into(&mut row.resolved_at);
             row.resolved_by = by.map(|a| self.name(a.actor)).unwrap_or_default();
             row.conclusion = by.map(|a| a.reason.clone()).unwrap_or_default();
         }
