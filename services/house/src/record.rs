@@ -284,7 +284,7 @@ impl Evidence {
             account: self.account(),
             rule_sets: self.printed_sets(),
             head: self.printed_head(),
-            people: self.people().map(|(_, person)| person).collect(),
+            people: self.people().into_iter().map(|(_, person)| person).collect(),
             engine: self.printed_engine(),
             cautions: self.cautions(),
             absent: assurance::absent(),

@@ -21,7 +21,7 @@ use crate::book::{Book, Cellar, at, grams, micros, refusal};
 async fn story(book: &Book) -> Cellar {
     let cellar = book.cellar().await;
     book.now("09-22T10:00");
-    let first = book.gravity(&cellar, "1.0665", Some("27.0"));
+    let first = Book::gravity(&cellar, "1.0665", Some("27.0"));
     book.read(&cellar, at("09-22T10:00"), vec![first]).await;
     book.read_at(&cellar, "09-22T18:00", "1.0665").await;
     let (proposal, _) = book.propose(&cellar, "09-22T18:10", cellar.autolysate, "1600").await;
@@ -42,9 +42,9 @@ async fn story(book: &Book) -> Cellar {
 
 async fn night(book: &Book, cellar: &Cellar) {
     book.now("09-24T09:05");
-    let typed = book.gravity(cellar, "1.0730", Some("20.0"));
+    let typed = Book::gravity(cellar, "1.0730", Some("20.0"));
     let typed = book.read(cellar, at("09-24T02:30"), vec![typed]).await;
-    let slip = book.gravity(cellar, "1.0370", Some("20.0"));
+    let slip = Book::gravity(cellar, "1.0370", Some("20.0"));
     book.amend(&book.ana, typed, AmendTo::Value(0, Box::new(slip)), "slip shows 1.0370").await;
     let entries = book.thrown_in(cellar, "09-24T02:40", "300", "night shift, pump tripped").await;
     let deviation: DeviationId = entries[1].body["deviation"].as_str().unwrap().parse().unwrap();
@@ -55,7 +55,7 @@ async fn night(book: &Book, cellar: &Cellar) {
     book.sign(&proposed, "strong hydrogen sulfide").await;
     book.now("09-24T18:05");
     book.add(cellar, proposal, cellar.dap, "151").await;
-    let receipt = book.receipt(
+    let receipt = Book::receipt(
         cellar.dap,
         "DP-0412",
         cellar.dap_material,
@@ -113,6 +113,7 @@ async fn the_record_tells_the_whole_story_on_paper() {
         "its lot P-1007",
         "“label reads P-1077”",
         "1.0665 SG at 27.0 °C",
+        "corrected as in entry 3 HY-1",
         "HY-1 hydrometer, calibrated 2025-03-01, due 2026-03-01",
         "1.0730 SG at 20.0 °C struck through, now 1.0370 SG at 20.0 °C",
         "“slip shows 1.0370”",
@@ -159,7 +160,7 @@ async fn a_record_as_of_n_has_the_same_bytes_after_a_hundred_more_entries() {
     book.amend(&book.ben, late, AmendTo::Void, "not this batch").await;
     for hours in 0..46 {
         book.house.set_clock(micros(hours, "10-06T12:00")).unwrap();
-        let value = book.gravity(&cellar, "1.0155", None);
+        let value = Book::gravity(&cellar, "1.0155", None);
         book.read(&cellar, at("09-25T06:00"), vec![value]).await;
         let settings = BTreeMap::from([("late_entry_hours".to_owned(), (hours + 3).to_string())]);
         let act = Act::ChangeSettings(settings, "trying out".to_owned());
@@ -169,7 +170,7 @@ async fn a_record_as_of_n_has_the_same_bytes_after_a_hundred_more_entries() {
     let role = domain::book::role::Role::Lead;
     book.act(&book.caro, Act::Withdraw(book.ben.person, role, Some(reason))).await.unwrap();
     book.adopt().await;
-    let receipt = book.receipt(
+    let receipt = Book::receipt(
         cellar.dap,
         "DP-0412",
         cellar.dap_material,
@@ -344,6 +345,23 @@ async fn what_cannot_be_drawn_or_handed_out_is_refused_with_a_reason() {
     let opening = book.log().await.last().unwrap().entry().unwrap().id;
     let error = book.house.issued_document(&book.ana, opening).await.unwrap_err();
     assert_eq!(refusal(error).kind, RefusalKind::Unknown);
+}
+
+/// Told to the minute, an addition may lie before the proposal that it carries out.
+#[tokio::test]
+async fn a_dose_told_to_the_minute_still_carries_its_proposal_out_once() {
+    let book = Book::found().await;
+    let cellar = book.cellar().await;
+    book.read_at(&cellar, "09-22T10:00", "1.0685").await;
+    book.house.set_clock(at("09-22T10:10").at.plus_minutes(1)).unwrap();
+    let (proposal, _) = book.propose(&cellar, "09-22T10:10", cellar.autolysate, "400").await;
+    let dose = |minute| book.dose(&cellar, at(minute), proposal, cellar.autolysate, "400");
+    dose("09-22T10:10").await.unwrap();
+    let again = dose("09-22T10:11").await.unwrap_err();
+    assert!(refusal(again).detail.contains("carried out already"));
+    let drawn = book.house.batch_record(&book.ana, cellar.batch, None).await.unwrap();
+    let text = book.pages(&drawn.pdf).join(" ");
+    assert!(text.contains("Proposals not carried out none recorded for this batch"), "{text}");
 }
 
 #[tokio::test]

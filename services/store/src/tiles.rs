@@ -39,12 +39,16 @@ pub async fn find(
     row.map(|bytes| Tile::from_bytes(id, &bytes).map_err(odd)).transpose()
 }
 
-/// The root over the first `size` entries.
+/// The root over the first `length` entries.
 ///
 /// # Errors
 /// [`StoreError::Inconsistent`] if the log is not that long, or its tiles do not fit.
-pub async fn root_at(conn: &mut Conn<'_>, site: SiteNumber, size: u64) -> Result<Hash, StoreError> {
-    let plan = EdgePlan::new(size);
+pub async fn root_at(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    length: u64,
+) -> Result<Hash, StoreError> {
+    let plan = EdgePlan::new(length);
     let tiles = fetch(conn, site, plan.tiles()).await?;
     let leaves = leaf_hashes(conn, site, plan.leaves()).await?;
     Ok(plan.load(&leaves, &tiles).map_err(odd)?.frontier().root())

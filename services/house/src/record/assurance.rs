@@ -92,13 +92,16 @@ impl Evidence {
         }
     }
 
-    /// Everybody who acted, with the roles they had at the end.
-    pub(crate) fn people(&self) -> impl Iterator<Item = (PersonId, Person)> {
-        self.names.iter().map(|(id, name)| {
+    /// Everybody who acted, with the roles they had at the end; by name.
+    pub(crate) fn people(&self) -> Vec<(PersonId, Person)> {
+        let person = |(id, name): (&PersonId, &String)| {
             let role = self.roles(Actor::Person(*id), self.log_size);
             let role = if role.is_empty() { "no role at the end".to_owned() } else { role };
             (*id, Person { name: name.clone(), role })
-        })
+        };
+        let mut people: Vec<_> = self.names.iter().map(person).collect();
+        people.sort_by(|(_, one), (_, other)| one.name.cmp(&other.name));
+        people
     }
 
     /// The engines that assessed.

@@ -109,8 +109,8 @@ impl House {
         batch: BatchId,
         as_of_n: Option<u64>,
     ) -> Result<Evidence, HouseError> {
-        let mut held = self.inner.db.reader().await?;
-        let conn = &mut held.conn();
+        let mut reader = self.inner.db.reader().await?;
+        let conn = &mut reader.conn();
         let count = log::count_of(conn, site.number, &batch.into()).await?;
         let n = as_of_n.unwrap_or(count);
         if count == 0 {
@@ -160,15 +160,15 @@ impl House {
         &self,
         conn: &mut Conn<'_>,
         site: &Site,
-        size: u64,
+        log_size: u64,
     ) -> Result<Head, HouseError> {
-        let root = tiles::root_at(conn, site.number, size).await?;
-        let checkpoint = Checkpoint { origin: site.origin.clone(), size, root };
+        let root = tiles::root_at(conn, site.number, log_size).await?;
+        let checkpoint = Checkpoint { origin: site.origin.clone(), size: log_size, root };
         let note = checkpoint.sign(self.inner.secrets.log_key());
         let verifier = self.verifier(&site.origin)?;
         Ok(Head {
             origin: checkpoint.origin,
-            size,
+            size: log_size,
             root,
             note: note.map_err(|e| HouseError::Failed(e.to_string()))?,
             key: verifier.to_string(),

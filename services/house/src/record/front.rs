@@ -167,9 +167,7 @@ impl Evidence {
         );
         row.supplier_lot = supplier_lot(receipt);
         row.received = words::date(entry.occurred_at.at, self.zone());
-        row.expiry = receipt
-            .expires_at
-            .map_or_else(|| "not stated".to_owned(), |at| words::date(at.at, self.zone()));
+        row.expiry = receipt.expires_at.map_or_else(|| "not stated".to_owned(), words::stated_date);
         row.struck = struck(self, entry, |body| match body {
             Body::LotReceived(body) => self.receipt_in_words(body),
             _ => String::new(),
@@ -189,12 +187,15 @@ impl Evidence {
     }
 
     fn receipt_in_words(&self, receipt: &LotReceived) -> String {
-        let supplier = receipt.supplier.map(|party| self.supplier(party)).unwrap_or_default();
-        let expiry = receipt.expires_at.map(|at| words::date(at.at, self.zone()));
+        let supplier = receipt.supplier.and_then(|party| {
+            let described = self.desk.party(party).ok()?.current.as_ref();
+            described.map(|(_, party)| party.name.clone())
+        });
+        let expiry = receipt.expires_at.map(words::stated_date);
         [
             format!("lot {}", receipt.code),
             words::amount(&receipt.amount),
-            supplier,
+            supplier.unwrap_or_default(),
             supplier_lot(receipt),
             expiry.map(|date| format!("expiry {date}")).unwrap_or_default(),
         ]

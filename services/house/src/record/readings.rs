@@ -1,9 +1,13 @@
 //! Readings with what they replaced, and the nitrogen account as the assessments kept it.
 
+use std::collections::{BTreeMap, BTreeSet};
+
 use domain::book::assessing::checks_line;
-use domain::book::body::{AdditionRecorded, Body, Reading, ReadingTaken};
+use domain::book::body::{AdditionRecorded, Body, InstrumentDescribed, Reading, ReadingTaken};
 use domain::checks;
+use domain::ids::InstrumentId;
 use domain::stamp::Micros;
+use domain::units::Quantity;
 use records::AccountRow;
 
 use super::evidence::{Evidence, Told};
@@ -12,24 +16,28 @@ use super::words;
 
 impl Evidence {
     pub(super) fn printed_readings(&self) -> Vec<records::Reading> {
-        self.told
-            .iter()
-            .filter_map(|told| match told.read.body.as_ref() {
-                Body::ReadingTaken(body) => Some(self.rows(told, body)),
-                _ => None,
-            })
-            .flatten()
-            .collect()
+        let mut seen = Seen::default();
+        let readings = self.told.iter().filter_map(|told| match told.read.body.as_ref() {
+            Body::ReadingTaken(body) => Some((told, body)),
+            _ => None,
+        });
+        readings.flat_map(|(told, body)| self.rows(told, body, &mut seen)).collect()
     }
 
     /// One row for each value, also for one that an amendment left out.
-    fn rows(&self, told: &Told, body: &ReadingTaken) -> Vec<records::Reading> {
+    fn rows(&self, told: &Told, body: &ReadingTaken, seen: &mut Seen) -> Vec<records::Reading> {
         let before = told.read.amendments.iter().filter_map(|a| reading_taken(&a.was.1));
         let most = before.map(|was| was.values.len()).chain([body.values.len()]).max();
-        (0..most.unwrap_or_default()).map(|index| self.row(told, body, index)).collect()
+        (0..most.unwrap_or_default()).map(|index| self.row(told, body, index, seen)).collect()
     }
 
-    fn row(&self, told: &Told, body: &ReadingTaken, index: usize) -> records::Reading {
+    fn row(
+        &self,
+        told: &Told,
+        body: &ReadingTaken,
+        index: usize,
+        seen: &mut Seen,
+    ) -> records::Reading {
         let value = body.values.get(index);
         let known = value.or_else(|| {
             let mut before = told.read.amendments.iter().rev();
@@ -55,8 +63,8 @@ impl Evidence {
             }
         }
         if let Some(value) = known {
-            row.method = method(value);
-            row.instrument = self.instrument(value, body);
+            row.method = method(value, told.n, seen);
+            row.instrument = self.instrument(value, body, seen);
         }
         if index == 0 {
             row.note = remark(body);
@@ -64,17 +72,14 @@ impl Evidence {
         row
     }
 
-    fn instrument(&self, value: &Reading, body: &ReadingTaken) -> String {
+    fn instrument(&self, value: &Reading, body: &ReadingTaken, seen: &mut Seen) -> String {
         let described = value.instrument.map(|id| {
             let state = self.desk.instrument(id).ok().and_then(|state| state.current.as_ref());
             state.map_or_else(
                 || id.to_string(),
                 |(_, it)| {
-                    let day = |lead: &str, day: &Option<String>| {
-                        day.as_ref().map(|day| format!(", {lead} {day}")).unwrap_or_default()
-                    };
-                    let tested = day("calibrated", &it.calibrated_on);
-                    format!("{} {}{tested}{}", it.code, it.name, day("due", &it.calibration_due))
+                    let is_new = seen.instruments.insert(id);
+                    if is_new { in_full(it) } else { it.code.clone() }
                 },
             )
         });
@@ -126,7 +131,7 @@ impl Evidence {
     fn dosed(&self, told: &Told, body: &AdditionRecorded) -> AccountRow {
         let lines: Vec<_> = body.lines.iter().map(checks_line).collect();
         let liquid = self.opening().map_or(0, |(_, opened)| {
-            let planned = opened.liquid_planned.as_ref().map_or(0, domain::units::Quantity::base);
+            let planned = opened.liquid_planned.as_ref().map_or(0, Quantity::base);
             if opened.liquid.base() > 0 { opened.liquid.base() } else { planned }
         });
         let [ammonium_n, amino_n] = match checks::nitrogen_mg_l(&lines, liquid) {
@@ -163,6 +168,23 @@ impl Evidence {
     }
 }
 
+/// What the rows above have told in full.
+#[derive(Default)]
+struct Seen {
+    /// A correction's formula, and the entry it was told with.
+    corrections: BTreeMap<String, u64>,
+    instruments: BTreeSet<InstrumentId>,
+}
+
+/// An instrument with its last test.
+fn in_full(it: &InstrumentDescribed) -> String {
+    let day = |lead: &str, day: &Option<String>| {
+        day.as_ref().map(|day| format!(", {lead} {day}")).unwrap_or_default()
+    };
+    let tested = day("calibrated", &it.calibrated_on);
+    format!("{} {}{tested}{}", it.code, it.name, day("due", &it.calibration_due))
+}
+
 /// What stands for a value that an amendment left out.
 const LEFT_OUT: &str = "left out by an amendment";
 
@@ -184,8 +206,18 @@ fn said(body: &Body, index: usize) -> String {
     value.map_or_else(|| LEFT_OUT.to_owned(), words::entered)
 }
 
-fn method(value: &Reading) -> String {
-    let correction = value.corrected.as_ref().map(|corrected| corrected.method.clone());
+/// The correction's formula once, then by the entry that told it.
+fn method(value: &Reading, n: u64, seen: &mut Seen) -> String {
+    let correction = value.corrected.as_ref().map(|corrected| {
+        let told = seen.corrections.get(&corrected.method);
+        told.map_or_else(
+            || corrected.method.clone(),
+            |first| format!("corrected as in entry {first}"),
+        )
+    });
+    if let Some(corrected) = &value.corrected {
+        seen.corrections.entry(corrected.method.clone()).or_insert(n);
+    }
     [value.method.clone(), correction].into_iter().flatten().collect::<Vec<_>>().join("; ")
 }
 

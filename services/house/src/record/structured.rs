@@ -207,7 +207,7 @@ impl Evidence {
     }
 
     fn people_value(&self) -> Vec<Value> {
-        let people = self.people();
+        let people = self.people().into_iter();
         people.map(|(id, it)| json!({ "id": id, "name": it.name, "roles": it.role })).collect()
     }
 }

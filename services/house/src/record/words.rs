@@ -17,6 +17,12 @@ pub(crate) fn date(at: Micros, zone: &str) -> String {
     stamp.get(..10).unwrap_or(&stamp).to_owned()
 }
 
+/// `YYYY-MM-DD` as it was stated, in the stated offset: midnight is not the evening before in another season.
+pub(crate) fn stated_date(stamp: Stamp) -> String {
+    let stamp = stamp.to_string();
+    stamp.get(..10).unwrap_or(&stamp).to_owned()
+}
+
 /// How far a zone is from Greenwich at that instant: `UTC-07:00`.
 pub(crate) fn offset(at: Micros, zone: &str) -> String {
     let stamp = Stamp::in_zone(at, zone).to_string();
@@ -202,6 +208,9 @@ mod tests {
         assert_eq!(clock(at, "America/Los_Angeles"), "2025-09-24 09:05");
         assert_eq!(offset(at, "America/Los_Angeles"), "UTC-07:00");
         assert_eq!(date(at, "Pacific/Auckland"), "2025-09-25");
+        let expiry = Stamp::parse("2025-12-31T00:00:00-07:00").unwrap();
+        assert_eq!(date(expiry.at, "America/Los_Angeles"), "2025-12-30");
+        assert_eq!(stated_date(expiry), "2025-12-31");
         assert_eq!(span(23_100_000_000), "6 h 25 min");
         assert_eq!(span(3 * 86_400_000_000), "3 d 0 h");
     }

@@ -30,32 +30,32 @@ use store::{Db, Place};
 /// The password of everybody here.
 const PASSWORD: &str = "made up for tests: seven herons";
 
-pub struct Book {
-    pub house: House,
-    pub db: Db,
-    pub site: Site,
-    pub ana: Caller,
-    pub ben: Caller,
-    pub caro: Caller,
-    pub directory: tempfile::TempDir,
+pub(crate) struct Book {
+    pub(crate) house: House,
+    pub(crate) db: Db,
+    pub(crate) site: Site,
+    pub(crate) ana: Caller,
+    pub(crate) ben: Caller,
+    pub(crate) caro: Caller,
+    pub(crate) directory: tempfile::TempDir,
 }
 
 /// What stands in the cellar.
-pub struct Cellar {
-    pub batch: BatchId,
-    pub supplier: PartyId,
-    pub dap_material: MaterialId,
-    pub dap: LotId,
-    pub autolysate: LotId,
-    pub held: LotId,
-    pub hydrometer: InstrumentId,
+pub(crate) struct Cellar {
+    pub(crate) batch: BatchId,
+    pub(crate) supplier: PartyId,
+    pub(crate) dap_material: MaterialId,
+    pub(crate) dap: LotId,
+    pub(crate) autolysate: LotId,
+    pub(crate) held: LotId,
+    pub(crate) hydrometer: InstrumentId,
 }
 
-pub fn at(text: &str) -> Stamp {
+pub(crate) fn at(text: &str) -> Stamp {
     Stamp::parse(&format!("2025-{text}:00-07:00")).unwrap()
 }
 
-pub fn grams(text: &str) -> Quantity {
+pub(crate) fn grams(text: &str) -> Quantity {
     Quantity::parse(text, "g", Dimension::Mass).unwrap()
 }
 
@@ -65,7 +65,7 @@ fn quantity(text: &str, unit: &str) -> Quantity {
 
 impl Book {
     /// Founded on 2025-09-08, with Ana in the cellar, Ben leading and Caro for quality.
-    pub async fn found() -> Self {
+    pub(crate) async fn found() -> Self {
         let directory = tempfile::tempdir().unwrap();
         let db = Db::open(&Place::Directory(directory.path().to_owned())).await.unwrap();
         store::migrate::migrate(&db).await.unwrap();
@@ -108,7 +108,7 @@ impl Book {
     }
 
     /// Drives the clock.
-    pub fn now(&self, text: &str) {
+    pub(crate) fn now(&self, text: &str) {
         self.house.set_clock(at(text).at).unwrap();
     }
 
@@ -116,7 +116,7 @@ impl Book {
         Stamp::in_zone(self.house.now(), "America/Los_Angeles")
     }
 
-    pub async fn act(&self, who: &Caller, act: Act) -> Result<Receipt, HouseError> {
+    pub(crate) async fn act(&self, who: &Caller, act: Act) -> Result<Receipt, HouseError> {
         let (caller, key) = (who.clone(), self.house.draw().unwrap());
         self.house.submit(Asked { caller, key, print: [3; 32], expects: None, act }).await
     }
@@ -125,7 +125,7 @@ impl Book {
         self.act(who, act).await.unwrap().entries[0].id
     }
 
-    pub async fn adopt(&self) {
+    pub(crate) async fn adopt(&self) {
         for (_, text) in shipped() {
             let adopt = Adopt {
                 text: (*text).to_owned(),
@@ -161,8 +161,7 @@ impl Book {
         material
     }
 
-    pub fn receipt(
-        &self,
+    pub(crate) fn receipt(
         lot: LotId,
         code: &str,
         material: MaterialId,
@@ -194,13 +193,13 @@ impl Book {
         amount: Quantity,
     ) -> LotId {
         let lot = self.house.draw().unwrap();
-        let receipt = self.receipt(lot, code, material, supplier, supplier_lot, amount);
+        let receipt = Self::receipt(lot, code, material, supplier, supplier_lot, amount);
         self.done(&self.ana, Act::Receive(Box::new(receipt))).await;
         lot
     }
 
     /// The wash of the story: molasses and cane sugar, 2,000 L in F-3, opened on 09-22 at 09:50.
-    pub async fn cellar(&self) -> Cellar {
+    pub(crate) async fn cellar(&self) -> Cellar {
         self.now("09-08T10:00");
         self.adopt().await;
         let supplier: PartyId = self.house.draw().unwrap();
@@ -285,7 +284,7 @@ impl Book {
     }
 
     /// A gravity read now; without a temperature it is taken as read.
-    pub fn gravity(&self, cellar: &Cellar, value: &str, celsius: Option<&str>) -> Reading {
+    pub(crate) fn gravity(cellar: &Cellar, value: &str, celsius: Option<&str>) -> Reading {
         Reading {
             quantity: "gravity".to_owned(),
             value: value.to_owned(),
@@ -299,7 +298,12 @@ impl Book {
         }
     }
 
-    pub async fn read(&self, cellar: &Cellar, taken_at: Stamp, values: Vec<Reading>) -> EntryId {
+    pub(crate) async fn read(
+        &self,
+        cellar: &Cellar,
+        taken_at: Stamp,
+        values: Vec<Reading>,
+    ) -> EntryId {
         let act = TakeReading {
             batch: cellar.batch,
             taken_at,
@@ -314,14 +318,19 @@ impl Book {
     }
 
     /// A gravity at 20 °C, read at that time and entered at once.
-    pub async fn read_at(&self, cellar: &Cellar, time: &str, value: &str) -> EntryId {
+    pub(crate) async fn read_at(&self, cellar: &Cellar, time: &str, value: &str) -> EntryId {
         self.now(time);
-        let reading = self.gravity(cellar, value, Some("20.0"));
+        let reading = Self::gravity(cellar, value, Some("20.0"));
         self.read(cellar, at(time), vec![reading]).await
     }
 
     /// A laboratory's nitrogen: ammonium counted as N, and amino nitrogen.
-    pub async fn nitrogen(&self, cellar: &Cellar, sampled: &str, parts: [&str; 2]) -> EntryId {
+    pub(crate) async fn nitrogen(
+        &self,
+        cellar: &Cellar,
+        sampled: &str,
+        parts: [&str; 2],
+    ) -> EntryId {
         let part = |quantity: &str, value: &str, expressed_as: Option<&str>| Reading {
             quantity: quantity.to_owned(),
             value: value.to_owned(),
@@ -350,7 +359,7 @@ impl Book {
     }
 
     /// A proposal for that time, asked now.
-    pub async fn propose(
+    pub(crate) async fn propose(
         &self,
         cellar: &Cellar,
         planned: &str,
@@ -381,28 +390,41 @@ impl Book {
         (proposal, (*receipt.entries[0]).clone())
     }
 
-    pub async fn add(
+    /// Done now, as proposed.
+    pub(crate) async fn add(
         &self,
         cellar: &Cellar,
         proposal: ProposalId,
         lot: LotId,
         amount: &str,
     ) -> EntryId {
+        let receipt = self.dose(cellar, self.local(), proposal, lot, amount).await.unwrap();
+        receipt.entries[0].id
+    }
+
+    pub(crate) async fn dose(
+        &self,
+        cellar: &Cellar,
+        done_at: Stamp,
+        proposal: ProposalId,
+        lot: LotId,
+        amount: &str,
+    ) -> Result<Receipt, HouseError> {
         let act = Add {
             batch: cellar.batch,
             proposal: Some(proposal),
-            done_at: self.local(),
+            done_at,
             captured_at: None,
             draws: vec![Draw { lot, amount: grams(amount) }],
             carrier_water: Some(quantity("4", "L")),
             preparation: Preparation::Slurry,
             already_done: None,
         };
-        self.done(&self.ana, Act::Add(Box::new(act))).await
+        self.act(&self.ana, Act::Add(Box::new(act))).await
     }
 
     /// Thrown in before anybody asked.
-    pub async fn thrown_in(
+    pub(crate) async fn thrown_in(
         &self,
         cellar: &Cellar,
         when: &str,
@@ -423,7 +445,7 @@ impl Book {
         receipt.entries.iter().map(|entry| (**entry).clone()).collect()
     }
 
-    pub async fn sign(&self, proposed: &Entry, reason: &str) {
+    pub(crate) async fn sign(&self, proposed: &Entry, reason: &str) {
         let binds = proposed.body["shown"].as_str().unwrap().to_owned();
         let act = SignOff {
             target: proposed.id,
@@ -435,20 +457,20 @@ impl Book {
         self.done(&self.ben, Act::SignOff(act)).await;
     }
 
-    pub async fn amend(&self, who: &Caller, target: EntryId, effect: AmendTo, reason: &str) {
+    pub(crate) async fn amend(&self, who: &Caller, target: EntryId, effect: AmendTo, reason: &str) {
         let reason = reason.to_owned();
         let act = Amend { target, effect, reason, amended_at: self.local() };
         self.done(who, Act::Amend(Box::new(act))).await;
     }
 
     /// How many entries the log has, and the entries.
-    pub async fn log(&self) -> Vec<store::log::Stored> {
+    pub(crate) async fn log(&self) -> Vec<store::log::Stored> {
         let mut held = self.db.reader().await.unwrap();
         store::log::entries(&mut held.conn(), self.site.number, 0, 10_000).await.unwrap()
     }
 
     /// What a PDF says, its lines joined, page by page.
-    pub fn pages(&self, pdf: &[u8]) -> Vec<String> {
+    pub(crate) fn pages(&self, pdf: &[u8]) -> Vec<String> {
         let path = self.directory.path().join("record.pdf");
         std::fs::write(&path, pdf).unwrap();
         let text = said_by("pdftotext", &path);
@@ -473,13 +495,13 @@ fn person(login: &str, name: &str) -> NewPerson {
     NewPerson { login: login.to_owned(), name: name.to_owned(), password: PASSWORD.to_owned() }
 }
 
-pub fn refusal(error: HouseError) -> Refusal {
+pub(crate) fn refusal(error: HouseError) -> Refusal {
     match error {
         HouseError::Refused(refusal) => refusal,
         other => panic!("not refused: {other:?}"),
     }
 }
 
-pub fn micros(hours_after: i64, from: &str) -> Micros {
+pub(crate) fn micros(hours_after: i64, from: &str) -> Micros {
     at(from).at.plus_hours(hours_after)
 }
