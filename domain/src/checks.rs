@@ -31,6 +31,7 @@ use crate::rules::lot_status::LotStatusRule;
 use self::case::{Case, Mark, Noticed};
 use self::number::fixed;
 
+pub use self::cautions::always as always_cautions;
 pub use self::finding::{
     Account, Assessment, Basis, Caution, Finding, FractionUsed, Remedy, SetUsed, Verdict,
 };
@@ -39,6 +40,7 @@ pub use self::situation::{
     AdoptedSet, Category, Done, Fraction, Line, LotStatus, Preparation, Proposed, ProposedLine,
     Situation, Standing, Yan,
 };
+pub use self::substances::nitrogen_mg_l;
 
 /// The version of the crate, and of the way it assesses.
 pub const ENGINE: &str = concat!(env!("CARGO_PKG_VERSION"), "/1");

@@ -205,7 +205,8 @@ fn proposed_line(lot: &LotState, line: &Line) -> ProposedLine {
     }
 }
 
-fn checks_line(line: &Line) -> checks::Line {
+/// A line as the checks take it.
+pub fn checks_line(line: &Line) -> checks::Line {
     checks::Line {
         lot_code: line.lot_code.clone(),
         material_name: line.material_name.clone(),

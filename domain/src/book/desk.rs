@@ -12,7 +12,7 @@ use uuid::Uuid;
 use super::body::{Body, EntryAmended};
 use super::command::{Blob, Command, Decision, DirectoryWrite, Draft, Need, Refusal, Stop};
 use super::entry_rows::{entry_rows, seq_cell};
-use super::in_force::{FoldError, InForce, in_force};
+use super::in_force::{FoldError, InForce, Known};
 use super::state::{
     BatchState, Described, DeviationState, HoldingState, LotState, PersonState, SiteState, State,
 };
@@ -37,15 +37,18 @@ pub struct Loaded {
     pub n: u64,
     /// Its entries in force, in the order in which things happened.
     pub entries: Vec<Arc<InForce>>,
+    /// Entries that were about it until an amendment moved them elsewhere, as they read there: they can be amended
+    /// again, and only what they were first about is sure to know them.
+    departed: Vec<Arc<InForce>>,
     /// What they add up to.
     pub state: State,
 }
 
 impl Loaded {
     fn of(subject: Subject, n: u64, entries: &[Entry]) -> Result<Self, FoldError> {
-        let entries = in_force(subject, entries)?;
+        let Known { here: entries, departed } = Known::read(subject, entries)?;
         let state = State::fold(subject, &entries);
-        Ok(Self { n, entries, state })
+        Ok(Self { n, entries, departed, state })
     }
 
     /// Takes one more entry: at the end if it is the latest, else in its place with a new fold.
@@ -63,12 +66,23 @@ impl Loaded {
 
     /// Puts an amended entry in place of what it was, if it still is about this subject.
     fn replace(&mut self, subject: Subject, entry: &Arc<InForce>) {
-        self.entries.retain(|other| other.seq != entry.seq);
+        self.remove(entry.seq);
         if entry.subjects.contains(&subject) {
             let place = self.entries.partition_point(|other| other.order() < entry.order());
             self.entries.insert(place, Arc::clone(entry));
+        } else {
+            self.departed.push(Arc::clone(entry));
         }
         self.state = State::fold(subject, &self.entries);
+    }
+
+    fn remove(&mut self, seq: u64) {
+        self.entries.retain(|other| other.seq != seq);
+        self.departed.retain(|other| other.seq != seq);
+    }
+
+    fn known(&self, seq: u64) -> Option<&Arc<InForce>> {
+        self.entries.iter().chain(&self.departed).find(|entry| entry.seq == seq)
     }
 }
 
@@ -372,13 +386,13 @@ impl Desk {
         Ok(())
     }
 
-    /// The amended entry as it reads so far, from whichever of the subjects still has it.
+    /// The amended entry as it reads so far, from the subject that knows most of how it came to read so: one that it
+    /// was moved to knows nothing of before.
     fn original(&self, entry: &Entry, amendment: &EntryAmended) -> Result<Arc<InForce>, FoldError> {
         entry
             .subjects()
-            .filter_map(|subject| self.subjects.get(&subject))
-            .flat_map(|loaded| &loaded.entries)
-            .find(|candidate| candidate.seq == amendment.target.seq)
+            .filter_map(|subject| self.subjects.get(&subject)?.known(amendment.target.seq))
+            .max_by_key(|candidate| candidate.amendments.len())
             .cloned()
             .ok_or_else(|| FoldError::Inconsistent {
                 seq: entry.seq,
@@ -441,6 +455,19 @@ impl Desk {
 
 /// What a decision may ask of the desk.
 impl Desk {
+    /// The desk as if that entry had never been written: what is to stand in its place is judged without it.
+    pub(crate) fn without(&self, entry: &InForce) -> Self {
+        let mut desk = self.clone();
+        for subject in &entry.subjects {
+            if let Some(loaded) = desk.subjects.get_mut(subject) {
+                let loaded = Arc::make_mut(loaded);
+                loaded.remove(entry.seq);
+                loaded.state = State::fold(*subject, &loaded.entries);
+            }
+        }
+        desk
+    }
+
     /// A subject, whether or not there are entries about it.
     ///
     /// # Errors
@@ -469,10 +496,9 @@ impl Desk {
     /// [`Stop`].
     pub fn adopted(&self, at: Micros) -> Result<Vec<AdoptedSet>, Stop> {
         let site = self.site()?;
-        let in_force = site.adopted.values().filter(|(since, _)| since.at <= at);
         let mut sets = Vec::new();
         let mut missing = Vec::new();
-        for (_, adopted) in in_force {
+        for adopted in site.binding_at(at) {
             match self.rule_sets.get(&adopted.digest) {
                 Some(set) => sets.push(AdoptedSet {
                     set: Arc::clone(set),
@@ -509,12 +535,12 @@ impl Desk {
     pub fn entry_in_force(&self, id: EntryId) -> Result<Arc<InForce>, Stop> {
         let entry = self.entry(id)?;
         for subject in entry.subjects() {
-            let loaded = self.subject(subject)?;
-            if let Some(found) = loaded.entries.iter().find(|other| other.seq == entry.seq) {
+            if let Some(found) = self.subject(subject)?.known(entry.seq) {
                 return Ok(Arc::clone(found));
             }
         }
-        Err(Refusal::conflict("that entry was moved to another subject by an amendment: amend the amendment's target there").into())
+        Err(Refusal::conflict("an amendment stands as it is: amend the entry that it is about")
+            .into())
     }
 
     /// Whether a code is free, or already names this very subject.

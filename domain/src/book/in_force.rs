@@ -164,6 +164,31 @@ impl InForce {
 /// # Errors
 /// [`FoldError`].
 pub fn in_force(subject: Subject, entries: &[Entry]) -> Result<Vec<Arc<InForce>>, FoldError> {
+    Ok(Known::read(subject, entries)?.here)
+}
+
+/// What the entries about a subject tell.
+pub(crate) struct Known {
+    /// The entries in force about it, in the fold's order.
+    pub(crate) here: Vec<Arc<InForce>>,
+    /// Those that were about it until an amendment moved them elsewhere, as they read there.
+    pub(crate) departed: Vec<Arc<InForce>>,
+}
+
+impl Known {
+    /// Reads the entries of a subject, given in the log's order.
+    pub(crate) fn read(subject: Subject, entries: &[Entry]) -> Result<Self, FoldError> {
+        let (mut here, departed): (Vec<_>, Vec<_>) = as_they_read(entries)?
+            .into_values()
+            .map(Arc::new)
+            .partition(|entry| entry.subjects.contains(&subject));
+        here.sort_by_key(|entry| entry.order());
+        Ok(Self { here, departed })
+    }
+}
+
+/// Originals by their number in the log, each with all of its amendments.
+fn as_they_read(entries: &[Entry]) -> Result<BTreeMap<u64, InForce>, FoldError> {
     let mut originals: BTreeMap<u64, InForce> = BTreeMap::new();
     for entry in entries {
         let read = InForce::original(entry)?;
@@ -179,13 +204,7 @@ pub fn in_force(subject: Subject, entries: &[Entry]) -> Result<Vec<Arc<InForce>>
         let after = before.amended(entry, amendment)?;
         originals.insert(seq, after);
     }
-    let mut list: Vec<_> = originals
-        .into_values()
-        .filter(|entry| entry.subjects.contains(&subject))
-        .map(Arc::new)
-        .collect();
-    list.sort_by_key(|entry| entry.order());
-    Ok(list)
+    Ok(originals)
 }
 
 /// An entry that an amendment moved to this subject from another: what it said before is not told here.

@@ -25,6 +25,11 @@ pub(crate) fn cautions(case: &Case<'_>) -> Vec<Caution> {
     shown.into_iter().filter(|(show, _)| *show).map(|(_, row)| row.caution()).collect()
 }
 
+/// What every record on paper says, also where nothing was ever proposed.
+pub fn always() -> [Caution; 2] {
+    [CARBON_DIOXIDE.caution(), CONFINED_SPACE.caution()]
+}
+
 struct Row {
     topic: &'static str,
     text: &'static str,
@@ -45,6 +50,12 @@ static CARBON_DIOXIDE: Row = Row {
     topic: "carbon-dioxide",
     text: "Carbon dioxide has no smell, is heavier than air and gathers in pits and tanks. Measure it at low level before you go in, ventilate, never lean into a tank.",
     source: "OSHA 8 h limit 5,000 ppm, 29 CFR 1910.1000 Z-1 (from memory); immediately dangerous at 40,000 ppm (NIOSH, read at second hand)",
+};
+
+static CONFINED_SPACE: Row = Row {
+    topic: "confined-space",
+    text: "Going into a tank, pit or still is permit work: isolate it; test for oxygen, then flammable vapour, then toxic gas; ventilate by forced air all the time; somebody stays outside with rescue ready. Most who die are would-be rescuers.",
+    source: "29 CFR 1910.146(b), (c)(5)(ii)(C): oxygen below 19.5 % or above 23.5 %, flammable vapour above 10 % of its lower limit (edition of 2015); the last sentence from memory",
 };
 
 static FOAM: Row = Row {

@@ -6,6 +6,7 @@
 
 use crate::units::Dimension;
 
+use super::number::{fixed, real};
 use super::situation::{Category, Line};
 
 /// Nitrogen by mass in millionths, and whether it is ammonium.
@@ -26,6 +27,22 @@ const MEASURES: [&str; 4] = ["amino_nitrogen", "ammonium_nitrogen", "phosphorus"
 
 /// One microgram of nitrogen in the sums below: parts per thousand million of millionths.
 pub(crate) const PER_MICROGRAM: i128 = 1_000_000_000_000_000;
+
+/// The nitrogen of these lines as ammonium and otherwise, in mg per litre of that much liquid, to a tenth as the
+/// account has it; `None` if that of one of them is not known.
+pub fn nitrogen_mg_l(lines: &[Line], liquid_ul: i64) -> Option<[String; 2]> {
+    let sum = |ammonium: bool| -> Option<i128> {
+        lines.iter().map(|line| line.sum_of(|found| found == ammonium)).sum()
+    };
+    let per_litre = |sum: i128| {
+        let mg_l = real(sum) / real(PER_MICROGRAM) / real(i128::from(liquid_ul)) * 1_000.0;
+        fixed(mg_l, 1)
+    };
+    if liquid_ul <= 0 {
+        return None;
+    }
+    Some([per_litre(sum(true)?), per_litre(sum(false)?)])
+}
 
 impl Line {
     /// The names a positive list is asked about: those the material is listed as and the nitrogen salts in it, or, if

@@ -91,6 +91,14 @@ pub fn canonical(value: &Value) -> Result<Vec<u8>, NotCanonical> {
     Ok(text.into_bytes())
 }
 
+/// The canonical bytes of a document that is kept beside the log and may be of any length.
+///
+/// # Errors
+/// [`NotCanonical::Refused`] with the place.
+pub fn document(value: &Value) -> Result<Vec<u8>, NotCanonical> {
+    spell(value).map(String::into_bytes)
+}
+
 /// SHA-256 of the canonical form, which may be of any length: the print of a command, or what a signature binds.
 ///
 /// # Errors

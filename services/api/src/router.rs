@@ -85,6 +85,7 @@ fn described() -> (Router<House>, Document) {
         .routes(routes!(proposals::assess))
         .routes(routes!(additions::list, additions::add))
         .routes(routes!(records::show, records::issue))
+        .routes(routes!(records::handed_out))
         .routes(routes!(entries::show))
         .routes(routes!(entries::amend))
         .routes(routes!(entries::sign))

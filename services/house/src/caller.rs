@@ -25,7 +25,7 @@ impl House {
     /// # Errors
     /// [`HouseError::Unauthorised`].
     pub async fn caller(&self, token: &str) -> Result<Caller, HouseError> {
-        let access = self.inner.tokens.check(token, self.token_time())?;
+        let access = self.inner.tokens.check(token, crate::sessions::token_time())?;
         self.caller_of(access.site, access.person).await
     }
 

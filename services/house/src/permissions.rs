@@ -106,6 +106,7 @@ pub const TABLE: &[Row] = &[
     row("GET", "/v1/batches/{id}/entries", Who::AnyRole),
     row("GET", "/v1/batches/{id}/record", Who::AnyRole),
     row("POST", "/v1/batches/{id}/record", LEAD_OR_QUALITY),
+    row("GET", "/v1/records/{id}", Who::AnyRole),
     // Entries.
     row("GET", "/v1/entries/{id}", Who::AnyRole),
     row("POST", "/v1/entries/{id}/amendments", CELLAR_AND_UP),
@@ -212,7 +213,7 @@ mod tests {
         let resolve = ("POST", "/v1/deviations/{id}/resolution");
         for role in Role::ALL {
             let wanted = if role == Quality { Decision::Allowed } else { Decision::Forbidden };
-            assert_eq!(allowed(resolve.0, resolve.1, Some(&[role])), wanted, "{role}");
+            assert_eq!(allowed(resolve.0, resolve.1, Some(&[role])), wanted, "{role:?}");
         }
         assert_eq!(allowed(resolve.0, resolve.1, Some(&[Cellar, Quality])), Decision::Allowed);
         assert_eq!(allowed("POST", "/v1/people", Some(&[Admin])), Decision::Allowed);

@@ -15,8 +15,8 @@ use crate::RecordError;
 use crate::finish::{self, Meta};
 use crate::sheet::{Furniture, Sheet};
 
-/// Stands on every page.
-const DEFERRAL: &str = "Local requirements prevail over anything printed here; this record replaces no \
+/// Stands on every page, and in everything else that says what a record says.
+pub const DEFERRAL: &str = "Local requirements prevail over anything printed here; this record replaces no \
     prescribed form, return or permit. A limit shown is not legal advice. A model is not a laboratory analysis.";
 
 /// A batch's record. Times are printed as given; use the site's own zone.
@@ -134,8 +134,10 @@ pub struct MaterialLot {
     pub expiry: String,
     /// Amount used in this batch.
     pub used: String,
-    /// Running number of the entry in the batch.
+    /// Running number of the first entry in the batch that uses it.
     pub n: u64,
+    /// What its receipt said before it was amended, oldest first.
+    pub struck: Vec<Struck>,
 }
 
 /// A reading or laboratory result.
@@ -159,8 +161,10 @@ pub struct Reading {
     pub by: String,
     /// How late it was entered, if later than the site allows.
     pub late: String,
-    /// The value it replaces.
-    pub struck: Option<Struck>,
+    /// A remark made with it.
+    pub note: String,
+    /// The values it replaces, oldest first.
+    pub struck: Vec<Struck>,
 }
 
 /// A value no longer in force.
@@ -168,6 +172,8 @@ pub struct Reading {
 pub struct Struck {
     /// The old value.
     pub was: String,
+    /// What stands in its place.
+    pub now: String,
     /// Who amended it.
     pub by: String,
     /// When.
@@ -215,6 +221,8 @@ pub struct Addition {
     pub preparation: String,
     /// Water that carried it.
     pub carrier_water: String,
+    /// What for.
+    pub purpose: String,
     /// Who did it.
     pub by: String,
     /// The worst verdict of its findings.
@@ -223,14 +231,16 @@ pub struct Addition {
     pub findings: Vec<Finding>,
     /// Signatures on it.
     pub signatures: Vec<Signature>,
-    /// It had already been done when it was entered.
-    pub already_done: bool,
-    /// How late it was entered, with the reason, if later than the site allows.
+    /// It had already been done when it was entered: the reason given.
+    pub already_done: Option<String>,
+    /// How late it was entered, if later than the site allows.
     pub late: String,
     /// The proposal behind it and how the amounts compare.
     pub proposal: Option<ProposalRef>,
     /// What became of a proposal that was not carried out ("withdrawn", "lapsed").
     pub outcome: String,
+    /// What it said before it was amended, oldest first.
+    pub struck: Vec<Struck>,
 }
 
 /// One lot of an addition.
@@ -302,6 +312,8 @@ pub struct Deviation {
     pub cause: String,
     /// What was done.
     pub action: String,
+    /// What it means for the batch.
+    pub conclusion: String,
     /// When it was resolved; empty while open.
     pub resolved_at: String,
     /// Who resolved it.

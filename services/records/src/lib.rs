@@ -23,8 +23,8 @@ mod batch_record;
 
 pub use batch_record::{
     Absent, AccountRow, Addition, Batch, BatchRecord, Caution, Chart, ChartDose, ChartPoint,
-    Deviation, DoseLine, Finding, Head, Issued, MaterialLot, Person, ProposalRef, Reading, RuleSet,
-    Signature, Site, Struck, Verdict, batch_record, batch_record_exact,
+    DEFERRAL, Deviation, DoseLine, Finding, Head, Issued, MaterialLot, Person, ProposalRef,
+    Reading, RuleSet, Signature, Site, Struck, Verdict, batch_record, batch_record_exact,
 };
 pub use error::RecordError;
 pub use font::legible;

@@ -1,6 +1,7 @@
 //! The tree above the entries: full tiles as stored, and the edge where the next entry goes.
 
 use domain::ledger::tiles::{Edge, EdgePlan, Tile, TileError, TileId, Tiles};
+use domain::ledger::tree::Hash;
 
 use crate::StoreError;
 use crate::db::{Conn, on};
@@ -36,6 +37,21 @@ pub async fn find(
         .fetch_optional(c)
         .await)?;
     row.map(|bytes| Tile::from_bytes(id, &bytes).map_err(odd)).transpose()
+}
+
+/// The root over the first `length` entries.
+///
+/// # Errors
+/// [`StoreError::Inconsistent`] if the log is not that long, or its tiles do not fit.
+pub async fn root_at(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    length: u64,
+) -> Result<Hash, StoreError> {
+    let plan = EdgePlan::new(length);
+    let tiles = fetch(conn, site, plan.tiles()).await?;
+    let leaves = leaf_hashes(conn, site, plan.leaves()).await?;
+    Ok(plan.load(&leaves, &tiles).map_err(odd)?.frontier().root())
 }
 
 /// How many tiles are stored.

@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::additions::Shortfall;
 use super::lots::Leg;
 use crate::ids::{BatchId, HoldingId, LotId, VesselId};
 use crate::units::Quantity;
@@ -51,6 +52,9 @@ pub struct BatchOpened {
     /// What went in.
     #[serde(skip_serializing_if = "Vec::is_empty", default)]
     pub ingredients: Vec<Ingredient>,
+    /// What the book could not cover, by lot.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub shortfalls: Vec<Shortfall>,
     /// Movements.
     pub legs: Vec<Leg>,
 }

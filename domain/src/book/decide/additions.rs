@@ -4,18 +4,21 @@
 //! out a proposal is held against it. An addition already made is always recorded; what is wrong with it opens one
 //! deviation with all that was found.
 
+use super::Deciding;
 use super::lots::{derived, zone};
-use super::{Deciding, ENGINE};
 use crate::book::assessing::{Prepared, Question, assess, settings_of};
 use crate::book::body::additions::Shortfall;
 use crate::book::body::{
     AdditionRecorded, DeviationOpened, Direction, Leg, Line, ProposalAssessed,
 };
-use crate::book::command::{Add, Decision, Draw, Propose, Refusal, Stop, not_ahead};
+use crate::book::command::{Add, Decision, Draft, Draw, Propose, Refusal, Stop, not_ahead};
+use crate::book::desk::Desk;
+use crate::book::in_force::InForce;
 use crate::book::state::{BatchState, LotState, ProposalState};
-use crate::book::subject::Subject;
+use crate::book::subject::{Subject, SubjectKind};
 use crate::checks::{Assessment, Finding, Verdict};
-use crate::ids::{DeviationId, HoldingId};
+use crate::ids::{DeviationId, EntryId, HoldingId};
+use crate::ledger::entry::Actor;
 use crate::settings::{Setting, Settings};
 use crate::stamp::{Micros, Stamp};
 use crate::units::{Decimal, Dimension, Quantity};
@@ -26,6 +29,9 @@ const MOST_LINES: usize = 40;
 pub(super) fn propose(it: &mut Deciding<'_>, act: &Propose) -> Result<Decision, Stop> {
     enough_lines(&act.draws)?;
     let batch = it.desk.batch(act.batch)?;
+    if batch.proposals.contains_key(&act.proposal) {
+        return Err(Refusal::conflict("this proposal has been made already").into());
+    }
     let settings = settings_of(&it.desk.site()?.settings)?;
     let earliest = it.now.plus_hours(-1);
     if act.planned_at.at < earliest {
@@ -114,49 +120,39 @@ fn shown(act: &Propose, lapses_at: Stamp, prepared: &Prepared) -> Result<String,
 
 pub(super) fn add(it: &mut Deciding<'_>, act: &Add) -> Result<Decision, Stop> {
     let body = addition(it, act)?;
-    let mut subjects: Vec<Subject> = vec![act.batch.into(), body.holding.into()];
-    subjects.extend(act.draws.iter().map(|draw| Subject::from(draw.lot)));
-    subjects.extend(body.legs.iter().map(|leg| Subject::from(leg.holding)));
     let opens = body.already_done.is_some() && body.assessment.verdict >= Verdict::Refer
         || !body.shortfalls.is_empty();
     let deviation = opens.then(|| body.clone());
-    let mut addition = it.draft(act.done_at, subjects, body);
+    let mut addition = it.draft(act.done_at, subjects_of(act, &body), body);
     addition.captured_at = act.captured_at;
     let mut drafts = vec![addition];
     if let Some(body) = deviation {
         let entry = drafts[0].id;
-        let opened = deviation_of(it, act, &body, entry)?;
-        let subjects = [act.batch.into(), body.holding.into(), opened.deviation.into()];
-        let at = Stamp::in_zone(it.now, &zone(it)?);
-        drafts.push(it.draft(at, subjects, opened));
+        drafts.push(breach(it, &body, entry, "added before it was asked for")?);
     }
     Ok(Decision { drafts, ..Decision::default() })
 }
 
-/// The addition as an entry says it; also what an amendment puts in its place.
-pub(super) fn addition(it: &Deciding<'_>, act: &Add) -> Result<AdditionRecorded, Stop> {
-    enough_lines(&act.draws)?;
-    not_ahead("/done_at", act.done_at, it.now)?;
+/// What an addition is about.
+pub(super) fn subjects_of(act: &Add, body: &AdditionRecorded) -> Vec<Subject> {
+    let mut subjects: Vec<Subject> = vec![act.batch.into(), body.holding.into()];
+    subjects.extend(act.draws.iter().map(|draw| Subject::from(draw.lot)));
+    subjects.extend(body.legs.iter().map(|leg| Subject::from(leg.holding)));
+    subjects
+}
+
+/// The addition as an entry says it.
+fn addition(it: &Deciding<'_>, act: &Add) -> Result<AdditionRecorded, Stop> {
     let batch = it.desk.batch(act.batch)?;
-    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
-    let holding = opened.holding;
-    let settings = settings_of(&it.desk.site()?.settings)?;
-    let question = Question {
-        batch: act.batch,
-        at: act.done_at.at,
-        draws: act.draws.clone(),
-        carrier_water: act.carrier_water.clone(),
-        preparation: act.preparation,
-        already_done: act.already_done.is_some(),
-        actor: it.command.actor,
-    };
-    let mut found = assess(it.desk, &question, it.now)?;
+    let asking =
+        Asking { actor: it.command.actor, happened: act.already_done.is_some(), now: it.now };
+    let (found, settings) = judged(it.desk, act, &asking)?;
     match (act.proposal, &act.already_done) {
         (Some(proposal), None) => {
             let Some(proposal) = batch.proposals.get(&proposal) else {
                 return Err(Refusal::unknown("proposal").into());
             };
-            held_against(it, act, proposal, &found.assessment, &settings)?;
+            held_against(act, proposal, &found.assessment, &settings)?;
         }
         (None, Some(_)) => {}
         _ => {
@@ -167,23 +163,100 @@ pub(super) fn addition(it: &Deciding<'_>, act: &Add) -> Result<AdditionRecorded,
             .into());
         }
     }
-    let mut legs = Vec::new();
-    let mut shortfalls = Vec::new();
-    for draw in &act.draws {
-        let lot = it.desk.lot(draw.lot)?;
-        draw_legs(lot, draw, holding, &mut legs, &mut shortfalls);
-    }
-    if act.proposal.is_some() && !shortfalls.is_empty() {
+    let body = recorded(it.desk, act, &asking, found, &settings)?;
+    if act.proposal.is_some() && !body.shortfalls.is_empty() {
         return Err(Refusal::conflict(
             "the book has less of a lot than this takes: if it has been done all the same, record it as already done",
         )
         .into());
     }
+    Ok(body)
+}
+
+/// The addition that an amendment puts in the place of another: it has happened, so nothing stands against it, and it
+/// is judged as of its own time on the book without the one it replaces.
+pub(super) fn corrected(
+    it: &Deciding<'_>,
+    target: &InForce,
+    old: &AdditionRecorded,
+    act: &Add,
+) -> Result<AdditionRecorded, Stop> {
+    let desk = it.desk.without(target);
+    // A correction is nobody's own: no proposal of the person who corrects was refused shortly before it.
+    let asking = Asking { actor: Actor::System, happened: true, now: it.now };
+    let (found, settings) = judged(&desk, act, &asking)?;
+    let body = recorded(&desk, act, &asking, found, &settings)?;
+    Ok(AdditionRecorded {
+        proposal: old.proposal,
+        already_done: old.already_done.clone(),
+        late: old.late,
+        ..body
+    })
+}
+
+/// Whether a correction tells of a breach that the entry did not tell of: a graver answer, more than the lots held, or
+/// another amount than the proposal that it carried out.
+pub(super) fn is_worse(
+    it: &Deciding<'_>,
+    act: &Add,
+    old: &AdditionRecorded,
+    new: &AdditionRecorded,
+) -> Result<bool, Stop> {
+    let batch = it.desk.batch(old.batch)?;
+    let settings = settings_of(&it.desk.site()?.settings)?;
+    let proposed = old.proposal.and_then(|id| batch.proposals.get(&id)?.body());
+    let strays = proposed.is_some_and(|body| same_amounts(act, &body.lines, &settings).is_err());
+    let verdict = new.assessment.verdict;
+    Ok(verdict >= Verdict::Refer && (verdict > old.assessment.verdict || strays)
+        || !new.shortfalls.is_empty() && new.shortfalls != old.shortfalls)
+}
+
+/// Who asks about an addition, when, and whether it has happened.
+struct Asking {
+    actor: Actor,
+    happened: bool,
+    now: Micros,
+}
+
+fn judged(desk: &Desk, act: &Add, asking: &Asking) -> Result<(Prepared, Settings), Stop> {
+    enough_lines(&act.draws)?;
+    not_ahead("/done_at", act.done_at, asking.now)?;
+    let settings = settings_of(&desk.site()?.settings)?;
+    let question = Question {
+        batch: act.batch,
+        at: act.done_at.at,
+        draws: act.draws.clone(),
+        carrier_water: act.carrier_water.clone(),
+        preparation: act.preparation,
+        already_done: asking.happened,
+        actor: asking.actor,
+    };
+    Ok((assess(desk, &question, asking.now)?, settings))
+}
+
+fn recorded(
+    desk: &Desk,
+    act: &Add,
+    asking: &Asking,
+    mut found: Prepared,
+    settings: &Settings,
+) -> Result<AdditionRecorded, Stop> {
+    let Some((_, opened)) = &desk.batch(act.batch)?.opened else {
+        return Err(Refusal::unknown("batch").into());
+    };
+    let holding = opened.holding;
+    let mut legs = Vec::new();
+    let mut shortfalls = Vec::new();
+    for draw in &act.draws {
+        draw_legs(desk.lot(draw.lot)?, draw, holding, &mut legs, &mut shortfalls);
+    }
     for shortfall in &shortfalls {
-        found.assessment.findings.push(shortfall_finding(&found.lines, shortfall));
+        let line = found.lines.iter().find(|line| line.lot == shortfall.lot);
+        let code = line.map_or("", |line| line.lot_code.as_str());
+        found.assessment.findings.push(shortfall_finding(code, shortfall));
         found.assessment.verdict = found.assessment.verdict.max(Verdict::Refer);
     }
-    let recorded_at = act.captured_at.map_or(it.now, |captured| captured.at.min(it.now));
+    let recorded_at = act.captured_at.map_or(asking.now, |captured| captured.at.min(asking.now));
     Ok(AdditionRecorded {
         batch: act.batch,
         holding,
@@ -192,7 +265,7 @@ pub(super) fn addition(it: &Deciding<'_>, act: &Add) -> Result<AdditionRecorded,
         carrier_water: act.carrier_water.clone(),
         preparation: act.preparation,
         already_done: act.already_done.clone(),
-        late: recorded_at.0 - act.done_at.at.0 > span(&settings, Setting::LateEntryHours),
+        late: recorded_at.0 - act.done_at.at.0 > span(settings, Setting::LateEntryHours),
         assessment: found.assessment,
         shortfalls,
         legs,
@@ -233,9 +306,7 @@ pub(super) fn draw_legs(
     legs.push(Leg { holding: into, direction: Direction::In, amount: draw.amount.clone() });
 }
 
-fn shortfall_finding(lines: &[Line], shortfall: &Shortfall) -> Finding {
-    let line = lines.iter().find(|line| line.lot == shortfall.lot);
-    let code = line.map_or("", |line| line.lot_code.as_str());
+pub(super) fn shortfall_finding(code: &str, shortfall: &Shortfall) -> Finding {
     let missing = shortfall.amount.to_string();
     Finding::new(
         "stock.shortfall",
@@ -250,7 +321,6 @@ fn shortfall_finding(lines: &[Line], shortfall: &Shortfall) -> Finding {
 
 /// Whether what was done is what was proposed, signed where it had to be, in time, and not worse than it looked.
 fn held_against(
-    it: &Deciding<'_>,
     act: &Add,
     proposal: &ProposalState,
     now_found: &Assessment,
@@ -260,6 +330,13 @@ fn held_against(
     let instead = "propose again, or record it as already done if it has happened";
     if proposal.done_by.is_some() {
         return Err(Refusal::conflict("this proposal has been carried out already").into());
+    }
+    let asked_at = proposal.entry.occurred_at;
+    if is_before(act.done_at, asked_at) {
+        return Err(Refusal::conflict(format!(
+            "this was done before it was proposed at {asked_at}: record it as already done"
+        ))
+        .into());
     }
     if act.done_at.at > proposed.lapses_at.at {
         return Err(Refusal::conflict(format!(
@@ -273,13 +350,14 @@ fn held_against(
     if verdict == Verdict::Refuse {
         return Err(Refusal::conflict(format!("this proposal was refused: {instead}")).into());
     }
-    let is_signed = proposal.signoffs.iter().any(|(_, _, signoff)| {
+    let is_signed = proposal.signoffs.iter().any(|(signed_at, _, signoff)| {
         signoff.binds == proposed.shown
+            && !is_before(act.done_at, *signed_at)
             && signoff.valid_until.is_none_or(|until| act.done_at.at <= until.at)
     });
     if verdict == Verdict::Refer && !is_signed {
         return Err(Refusal::conflict(
-            "this proposal needs a second person's signature, which is missing or has run out",
+            "this proposal needs a second person's signature, which is missing, has run out or came after the fact",
         )
         .into());
     }
@@ -302,8 +380,12 @@ fn held_against(
         ))
         .into());
     }
-    debug_assert!(!ENGINE.is_empty() && it.now.0 >= 0);
     Ok(())
+}
+
+/// Whether it happened in an earlier minute: people write down minutes, the clock knows more.
+const fn is_before(happened: Stamp, stamp: Stamp) -> bool {
+    happened.at.plus_minutes(1).0 <= stamp.at.0
 }
 
 fn same_amounts(act: &Add, proposed: &[Line], settings: &Settings) -> Result<(), Refusal> {
@@ -333,17 +415,17 @@ fn same_amounts(act: &Add, proposed: &[Line], settings: &Settings) -> Result<(),
 }
 
 /// The deviation that an addition opens, with everything that was found above information.
-fn deviation_of(
+pub(super) fn breach(
     it: &mut Deciding<'_>,
-    act: &Add,
     body: &AdditionRecorded,
-    entry: crate::ids::EntryId,
-) -> Result<DeviationOpened, Stop> {
-    let batch: &BatchState = it.desk.batch(act.batch)?;
+    entry: EntryId,
+    how: &str,
+) -> Result<Draft, Stop> {
+    let batch: &BatchState = it.desk.batch(body.batch)?;
     let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
-    let code = format!("{}-D{}", opened.code, batch.deviations.len() + 1);
+    let (code, first) = (opened.code.clone(), batch.deviations.len() + 1);
     let deviation: DeviationId = it.id();
-    it.desk.code_is_free(crate::book::subject::SubjectKind::Deviation, &code, deviation.0)?;
+    let code = free_code(it, &code, first, deviation)?;
     let what: Vec<_> =
         body.lines.iter().map(|line| format!("{} {}", line.amount, line.material_name)).collect();
     let findings = body
@@ -353,14 +435,36 @@ fn deviation_of(
         .filter(|finding| finding.verdict > Verdict::Clear)
         .cloned()
         .collect();
-    Ok(DeviationOpened {
+    let opened = DeviationOpened {
         deviation,
         code,
-        title: format!("{} added before it was asked for", what.join(", ")),
-        batch: Some(act.batch),
+        title: format!("{} {how}", what.join(", ")),
+        batch: Some(body.batch),
         entry: Some(entry),
         findings,
-    })
+    };
+    let at = Stamp::in_zone(it.now, &zone(it)?);
+    let subjects = [body.batch.into(), body.holding.into(), deviation.into()];
+    Ok(it.draft(at, subjects, opened))
+}
+
+/// The first free code of a batch's deviations from this number on: what has happened is recorded, whoever has used
+/// such a code before.
+pub(super) fn free_code(
+    it: &Deciding<'_>,
+    batch_code: &str,
+    first: usize,
+    deviation: DeviationId,
+) -> Result<String, Stop> {
+    let mut number = first;
+    loop {
+        let code = format!("{batch_code}-D{number}");
+        match it.desk.code_is_free(SubjectKind::Deviation, &code, deviation.0) {
+            Ok(()) => return Ok(code),
+            Err(Stop::Refused(_)) => number += 1,
+            Err(need) => return Err(need),
+        }
+    }
 }
 
 /// A setting in hours, as microseconds.

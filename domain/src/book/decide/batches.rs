@@ -1,16 +1,19 @@
 //! Opening a batch.
 
 use super::Deciding;
-use super::additions::draw_legs;
+use super::additions::{draw_legs, free_code, shortfall_finding};
+use super::lots::zone;
 use crate::book::assessing::line_of;
+use crate::book::body::additions::Shortfall;
 use crate::book::body::{
-    BatchOpened, Direction, ExpectedFinal, FermentableSugar, Leg, VesselDescribed,
+    BatchOpened, DeviationOpened, Direction, ExpectedFinal, FermentableSugar, Leg, VesselDescribed,
 };
 use crate::book::command::{Decision, OpenBatch, Refusal, Stop, ingredient, not_ahead};
 use crate::book::subject::{Subject, SubjectKind};
 use crate::densimetry::{Scale, correct};
-use crate::ids::HoldingId;
+use crate::ids::{DeviationId, HoldingId};
 use crate::nitrogen::Demand;
+use crate::stamp::Stamp;
 
 /// The classes the checks know, in the words of the law texts they come from.
 pub const PRODUCT_CLASSES: &[&str] = &[
@@ -73,10 +76,39 @@ pub(super) fn open(it: &mut Deciding<'_>, act: &OpenBatch) -> Result<Decision, S
             .map(|(g_per_l, basis)| FermentableSugar { g_per_l, basis }),
         demand: act.demand.clone(),
         ingredients,
+        shortfalls,
         legs,
     };
-    let draft = it.draft(act.opened_at, subjects, body);
-    Ok(Decision { drafts: vec![draft], ..Decision::default() })
+    let deviation = if body.shortfalls.is_empty() { None } else { Some(short_of(it, &body)?) };
+    let mut drafts = vec![it.draft(act.opened_at, subjects, body)];
+    if let Some((opened, subjects)) = deviation {
+        let at = Stamp::in_zone(it.now, &zone(it)?);
+        let opened = DeviationOpened { entry: Some(drafts[0].id), ..opened };
+        drafts.push(it.draft(at, subjects, opened));
+    }
+    Ok(Decision { drafts, ..Decision::default() })
+}
+
+/// The deviation that a batch opens when it was filled with more than the book had.
+fn short_of(
+    it: &mut Deciding<'_>,
+    body: &BatchOpened,
+) -> Result<(DeviationOpened, [Subject; 3]), Stop> {
+    let deviation: DeviationId = it.id();
+    let code = free_code(it, &body.code, 1, deviation)?;
+    let finding = |short: &Shortfall| {
+        let line = body.ingredients.iter().find(|ingredient| ingredient.lot == short.lot);
+        shortfall_finding(line.map_or("", |line| line.lot_code.as_str()), short)
+    };
+    let opened = DeviationOpened {
+        deviation,
+        code,
+        title: format!("{} filled with more than the book had", body.code),
+        batch: Some(body.batch),
+        entry: None,
+        findings: body.shortfalls.iter().map(finding).collect(),
+    };
+    Ok((opened, [body.batch.into(), body.holding.into(), deviation.into()]))
 }
 
 /// What is filled must be liquid at most as much as the whole, and must fit into the vessel on the batch's premises.

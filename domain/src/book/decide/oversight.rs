@@ -3,14 +3,14 @@
 use std::collections::BTreeSet;
 
 use super::Deciding;
-use super::additions::{addition, span};
+use super::additions::{breach as breach_of, corrected, is_worse, span, subjects_of};
 use super::lots::receipt;
 use super::readings::{checked, reading};
 use crate::book::assessing::settings_of;
 use crate::book::body::oversight::{About, ItemChange, VoidMark};
 use crate::book::body::{
-    Body, DeviationOpened, DeviationResolved, Effect, EntryAmended, RecordIssued, Replacement,
-    SignoffGiven, Target,
+    AdditionRecorded, Body, DeviationOpened, DeviationResolved, Effect, EntryAmended, RecordIssued,
+    Replacement, SignoffGiven, Target,
 };
 use crate::book::command::{
     Amend, AmendTo, Decision, Issue, OpenDeviation, Refusal, ResolveDeviation, SignOff, Stop,
@@ -159,6 +159,7 @@ pub(super) fn amend(it: &mut Deciding<'_>, act: &Amend) -> Result<Decision, Stop
     }
     may_amend(it, &target)?;
     let (effect, subjects) = effect(it, &target, &act.effect)?;
+    let breach = corrected_breach(it, &target, &act.effect, &effect)?;
     let all: BTreeSet<Subject> =
         entry.subjects().chain(target.subjects.iter().copied()).chain(subjects).collect();
     let body = EntryAmended {
@@ -175,12 +176,48 @@ pub(super) fn amend(it: &mut Deciding<'_>, act: &Amend) -> Result<Decision, Stop
         effect,
         reason: act.reason.clone(),
     };
-    let draft = it.draft(act.amended_at, all, body);
-    Ok(Decision { drafts: vec![draft], ..Decision::default() })
+    let mut drafts = vec![it.draft(act.amended_at, all, body)];
+    if let Some(body) = breach {
+        drafts.push(breach_of(it, &body, act.target, "added, as a correction says")?);
+    }
+    Ok(Decision { drafts, ..Decision::default() })
 }
 
-/// The author within the shift; otherwise a lead or quality.
+/// The corrected addition, if it tells of a breach that the entry did not tell of.
+fn corrected_breach(
+    it: &Deciding<'_>,
+    target: &InForce,
+    to: &AmendTo,
+    effect: &Effect,
+) -> Result<Option<AdditionRecorded>, Stop> {
+    let (AmendTo::Addition(act), Body::AdditionRecorded(old), Effect::Replace(replacement)) =
+        (to, target.body.as_ref(), effect)
+    else {
+        return Ok(None);
+    };
+    let (kind, kv) = target.body.kind();
+    let Ok(Body::AdditionRecorded(new)) = Body::read(kind, kv, &replacement.body) else {
+        return Ok(None);
+    };
+    Ok(is_worse(it, act, old, &new)?.then_some(new))
+}
+
+/// Who answers for what the entry says: people, settings and rule sets are the admin's, whether a lot may be used and
+/// what became of a deviation are quality's. Everything else: the author within the shift; otherwise a lead or quality.
 fn may_amend(it: &Deciding<'_>, target: &InForce) -> Result<(), Stop> {
+    match target.body.as_ref() {
+        Body::PersonEnrolled(_)
+        | Body::RoleGranted(_)
+        | Body::RoleWithdrawn(_)
+        | Body::SettingsChanged(_)
+        | Body::RulesetAdopted(_) => {
+            return Ok(it.needs(&[Role::Admin], "amend people, settings or rule sets")?);
+        }
+        Body::LotStatusChanged(_) | Body::DeviationOpened(_) | Body::DeviationResolved(_) => {
+            return Ok(it.needs(&[Role::Quality], "amend a lot's status or a deviation")?);
+        }
+        _ => {}
+    }
     let settings = settings_of(&it.desk.site()?.settings)?;
     let shift_ends = target.recorded_at.0 + span(&settings, Setting::ShiftHours);
     if target.actor == it.command.actor && it.now.0 <= shift_ends {
@@ -216,14 +253,8 @@ fn effect(
                 (act.taken_at, vec![act.batch.into(), body.holding.into()], body.into())
             }
             (AmendTo::Addition(act), Body::AdditionRecorded(old)) => {
-                let mut body = addition(it, act)?;
-                body.proposal = old.proposal;
-                body.already_done.clone_from(&old.already_done);
-                body.late = old.late;
-                let mut subjects: Vec<Subject> = vec![act.batch.into(), body.holding.into()];
-                subjects.extend(act.draws.iter().map(|draw| Subject::from(draw.lot)));
-                subjects.extend(body.legs.iter().map(|leg| Subject::from(leg.holding)));
-                (act.done_at, subjects, body.into())
+                let body = corrected(it, target, old, act)?;
+                (act.done_at, subjects_of(act, &body), body.into())
             }
             (AmendTo::Receipt(act), Body::LotReceived(old)) => {
                 if act.lot != old.lot {

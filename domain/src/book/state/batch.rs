@@ -31,6 +31,8 @@ pub struct BatchState {
     pub additions: Vec<Arc<InForce>>,
     /// What was proposed.
     pub proposals: BTreeMap<ProposalId, ProposalState>,
+    /// Which addition carried out which proposal; a corrected time may lie before the proposal.
+    carried_out: BTreeMap<ProposalId, u64>,
     /// When yeast first went in.
     pub pitched_at: Option<Micros>,
     /// When the last ingredient that is no nutrient, yeast or sulfite went in.
@@ -94,6 +96,7 @@ impl BatchState {
             sugar: Vec::new(),
             additions: Vec::new(),
             proposals: BTreeMap::new(),
+            carried_out: BTreeMap::new(),
             pitched_at: None,
             last_ingredient_at: None,
             deviations: Vec::new(),
@@ -106,8 +109,11 @@ impl BatchState {
             Body::ReadingTaken(body) if body.batch == self.batch => self.read(entry, body),
             Body::AdditionRecorded(body) if body.batch == self.batch => self.add(entry, body),
             Body::ProposalAssessed(body) if body.batch == self.batch => {
-                let state =
-                    ProposalState { entry: Arc::clone(entry), signoffs: Vec::new(), done_by: None };
+                let state = ProposalState {
+                    entry: Arc::clone(entry),
+                    signoffs: Vec::new(),
+                    done_by: self.carried_out.get(&body.proposal).copied(),
+                };
                 self.proposals.insert(body.proposal, state);
             }
             Body::SignoffGiven(body) => {
@@ -166,8 +172,11 @@ impl BatchState {
                 _ => {}
             }
         }
-        if let Some(proposal) = body.proposal.and_then(|id| self.proposals.get_mut(&id)) {
-            proposal.done_by = Some(entry.seq);
+        if let Some(id) = body.proposal {
+            self.carried_out.insert(id, entry.seq);
+            if let Some(proposal) = self.proposals.get_mut(&id) {
+                proposal.done_by = Some(entry.seq);
+            }
         }
         self.additions.push(Arc::clone(entry));
     }

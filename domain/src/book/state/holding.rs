@@ -1,6 +1,7 @@
 //! A holding: what is booked in one place, by dimension.
 
 use crate::book::body::Body;
+use crate::book::body::additions::Shortfall;
 use crate::book::in_force::InForce;
 use crate::book::table::{Cell, Row};
 use crate::book::tables::HOLDING;
@@ -39,12 +40,8 @@ impl HoldingState {
                 self.of = Some(("batch", body.batch.0));
                 self.vessel = Some(body.vessel.0);
             }
-            Body::AdditionRecorded(body) => {
-                if let Some(short) = body.shortfalls.iter().find(|s| s.unexplained == self.holding)
-                {
-                    self.of = Some(("unexplained", short.lot.0));
-                }
-            }
+            Body::BatchOpened(body) => self.explain(&body.shortfalls),
+            Body::AdditionRecorded(body) => self.explain(&body.shortfalls),
             _ => {}
         }
         for leg in entry.body.legs().iter().filter(|leg| leg.holding == self.holding) {
@@ -55,6 +52,12 @@ impl HoldingState {
                 Ok(Dimension::Count) => self.pieces += amount,
                 Ok(Dimension::Fraction) | Err(_) => {}
             }
+        }
+    }
+
+    fn explain(&mut self, shortfalls: &[Shortfall]) {
+        if let Some(short) = shortfalls.iter().find(|short| short.unexplained == self.holding) {
+            self.of = Some(("unexplained", short.lot.0));
         }
     }
 

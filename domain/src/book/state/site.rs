@@ -6,7 +6,7 @@ use crate::book::body::{Body, RulesetAdopted, SiteFounded};
 use crate::book::in_force::InForce;
 use crate::book::table::Row;
 use crate::book::tables::{ADOPTION, SETTING};
-use crate::stamp::Stamp;
+use crate::stamp::{Micros, Stamp};
 
 /// A site as its entries say.
 #[derive(Clone, Debug, Default)]
@@ -17,6 +17,8 @@ pub struct SiteState {
     pub settings: BTreeMap<String, String>,
     /// Rule sets that bind, by set and standing, with since when.
     pub adopted: BTreeMap<(String, String), (Stamp, RulesetAdopted)>,
+    /// Every adoption, by time: what bound before, and what will bind.
+    adoptions: Vec<(Stamp, RulesetAdopted)>,
 }
 
 impl SiteState {
@@ -29,9 +31,20 @@ impl SiteState {
             Body::RulesetAdopted(body) => {
                 let key = (body.set.clone(), body.standing.to_string());
                 self.adopted.insert(key, (entry.occurred_at, body.clone()));
+                self.adoptions.push((entry.occurred_at, body.clone()));
             }
             _ => {}
         }
+    }
+
+    /// The rule sets that bind at that moment: of each set and standing the latest version adopted by then. A version
+    /// adopted from a later day on does not end the one before it until that day.
+    pub fn binding_at(&self, at: Micros) -> impl Iterator<Item = &RulesetAdopted> {
+        let mut binding = BTreeMap::new();
+        for (_, adopted) in self.adoptions.iter().filter(|(since, _)| since.at <= at) {
+            binding.insert((&adopted.set, adopted.standing.to_string()), adopted);
+        }
+        binding.into_values()
     }
 
     pub(crate) fn rows(&self) -> Vec<Row> {

@@ -225,3 +225,11 @@ proptest! {
         }
     }
 }
+
+#[test]
+fn a_document_may_be_longer_than_an_entry() {
+    let value = json!({ "b": "x".repeat(MAX_ENTRY_BYTES), "a": 1 });
+    assert!(matches!(canonical(&value), Err(NotCanonical::TooLong(_))));
+    assert!(document(&value).unwrap().starts_with(br#"{"a":1,"b":"x"#));
+    assert!(document(&json!({ "a": null })).is_err());
+}

@@ -335,7 +335,7 @@ pub(crate) async fn account(
     Path(id): Path<Uuid>,
 ) -> Result<Json<AccountView>, Problem> {
     let found = house.account(&(&caller).into(), BatchId(id)).await?;
-    let fraction_used = found.fraction_used.map(|fraction| serde_json::to_value(fraction));
+    let fraction_used = found.fraction_used.map(serde_json::to_value);
     Ok(Json(AccountView {
         account: serde_json::to_value(found.account_before).unwrap_or_default(),
         fraction_used: fraction_used.transpose().unwrap_or_default(),

@@ -4,7 +4,7 @@ use axum::Json;
 use axum::extract::{Path, Query, State};
 use axum::http::{HeaderMap, StatusCode};
 use axum::response::{IntoResponse, Response};
-use domain::ids::BatchId;
+use domain::ids::{BatchId, EntryId};
 use house::House;
 use serde::{Deserialize, Serialize};
 use utoipa::{IntoParams, ToSchema};
@@ -90,4 +90,22 @@ pub(crate) async fn issue(
         json: issued.json,
     };
     Ok((StatusCode::CREATED, Json(view)))
+}
+
+/// A record that was handed out, byte for byte as it was: PDF or JSON, by `Accept`.
+#[utoipa::path(get, path = "/v1/records/{id}", operation_id = "show_issued_record", tag = "records", params(("id" = Uuid, Path, description = "The entry that says it was handed out")), security(("bearer" = [])),
+    responses((status = 200, description = "PDF or JSON", content_type = "application/pdf"), (status = "4XX", body = ProblemDocument, content_type = "application/problem+json")))]
+pub(crate) async fn handed_out(
+    State(house): State<House>,
+    caller: Caller,
+    Path(id): Path<Uuid>,
+    headers: HeaderMap,
+) -> Result<Response, Problem> {
+    let caller = (&caller).into();
+    if wants_pdf(&headers) {
+        let bytes = house.issued_document(&caller, EntryId(id)).await?;
+        return Ok(document("application/pdf", &format!("batch-record-{id}.pdf"), bytes));
+    }
+    let bytes = house.issued_json(&caller, EntryId(id)).await?;
+    Ok(document("application/json", &format!("batch-record-{id}.json"), bytes))
 }

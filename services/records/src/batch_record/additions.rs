@@ -1,6 +1,7 @@
 //! Additions, proposals that were not carried out, and deviations.
 
 use super::front::join;
+use super::readings::strike;
 use super::{Addition, BatchRecord, Deviation, Finding, Signature, Verdict};
 use crate::mark::Mark;
 use crate::sheet::Sheet;
@@ -65,6 +66,7 @@ fn row(addition: &Addition) -> Row {
         });
         row.note("Lots", lots);
     }
+    strike(&mut row, &addition.struck);
     particulars(&mut row, addition);
     for finding in &addition.findings {
         row.notes.push(finding_note(finding));
@@ -80,13 +82,17 @@ fn particulars(row: &mut Row, addition: &Addition) {
     if !prepared.is_empty() {
         row.note("Prepared", prepared);
     }
+    if !addition.purpose.is_empty() {
+        row.note("Purpose", &*addition.purpose);
+    }
     if let Some(proposal) = &addition.proposal {
         let text =
             format!("entry {}: proposed {}, done {}", proposal.n, proposal.proposed, proposal.done);
         row.note("Proposal", text);
     }
-    if addition.already_done {
-        row.note("Already done", "entered after the act, and assessed as of the time of the act");
+    if let Some(reason) = &addition.already_done {
+        let told = "entered after the act, and assessed as of the time of the act";
+        row.note("Already done", format!("{told}: “{reason}”"));
     }
     if !addition.late.is_empty() {
         row.note("Late", &*addition.late);
@@ -158,6 +164,9 @@ fn deviation_row(deviation: &Deviation) -> Row {
     for (lead, text) in [("Cause", &deviation.cause), ("Action", &deviation.action)] {
         let text = if text.is_empty() { "not yet stated" } else { text };
         row.note(lead, text);
+    }
+    if !deviation.conclusion.is_empty() {
+        row.note("Conclusion", &*deviation.conclusion);
     }
     if let Some(signature) = &deviation.signature {
         row.note("Signed", signed(signature));

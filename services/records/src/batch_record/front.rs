@@ -1,5 +1,6 @@
 //! The first page: what the batch is, how to read the marks, what went in, how it ran.
 
+use super::readings::strike;
 use super::{Absent, BatchRecord, standing};
 use crate::chart;
 use crate::font::Weight;
@@ -106,7 +107,7 @@ fn materials(sheet: &mut Sheet, record: &BatchRecord) {
     ];
     let mut table = Table::titled(sheet, "Materials and their lots", "", &columns);
     for lot in &record.materials {
-        table.row(Row::new([
+        let mut row = Row::new([
             Cell::from(lot.n.to_string()),
             Cell::from(&*lot.material),
             Cell::from(&*lot.lot),
@@ -114,7 +115,9 @@ fn materials(sheet: &mut Sheet, record: &BatchRecord) {
             Cell::from(&*lot.received),
             Cell::from(&*lot.expiry),
             Cell::from(&*lot.used),
-        ]));
+        ]);
+        strike(&mut row, &lot.struck);
+        table.row(row);
     }
     table.end();
 }

@@ -1,6 +1,6 @@
 //! Readings with their corrections and amendments, and the nitrogen account.
 
-use super::{BatchRecord, Reading};
+use super::{BatchRecord, Reading, Struck};
 use crate::mark::Mark;
 use crate::sheet::Sheet;
 use crate::table::{Cell, Column, Row, Side, Table, Voice};
@@ -28,29 +28,39 @@ fn readings(sheet: &mut Sheet, record: &BatchRecord) {
 }
 
 fn row(reading: &Reading) -> Row {
-    let was = reading.struck.as_ref().map_or("", |struck| &struck.was);
+    let entered = reading
+        .struck
+        .iter()
+        .fold(Cell::default(), |cell, struck| cell.and(Voice::Struck, &*struck.was))
+        .and(Voice::Plain, &*reading.entered);
     let mut row = Row::new([
         Cell::from(reading.n.to_string()),
         Cell::from(&*reading.at),
         Cell::from(&*reading.kind),
-        Cell::default().and(Voice::Struck, was).and(Voice::Plain, &*reading.entered),
+        entered,
         Cell::from(&*reading.corrected),
         Cell::from(&*reading.method).and(Voice::Quiet, &*reading.instrument),
         Cell::from(&*reading.by),
     ]);
-    if let Some(struck) = &reading.struck {
-        row.marks.push(Mark::Amended);
-        let text = format!(
-            "{} struck through, now {}; {}, {}: “{}”",
-            struck.was, reading.entered, struck.by, struck.at, struck.why
-        );
-        row.note("Amended", text);
+    strike(&mut row, &reading.struck);
+    if !reading.note.is_empty() {
+        row.note("Remark", &*reading.note);
     }
     if !reading.late.is_empty() {
         row.marks.push(Mark::Late);
         row.note("Late", &*reading.late);
     }
     row
+}
+
+/// The mark of an amendment, and for each one what it struck, who made it, when and why.
+pub(super) fn strike(row: &mut Row, struck: &[Struck]) {
+    if !struck.is_empty() {
+        row.marks.push(Mark::Amended);
+    }
+    for Struck { was, now, by, at, why } in struck {
+        row.note("Amended", format!("{was} struck through, now {now}; {by}, {at}: “{why}”"));
+    }
 }
 
 fn account(sheet: &mut Sheet, record: &BatchRecord) {

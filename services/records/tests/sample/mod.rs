@@ -143,10 +143,8 @@ fn thrown_in() -> Addition {
                 "",
             ),
         ],
-        already_done: true,
-        late:
-            "entered 2025-09-24 09:05, 6 h 25 min after the act: night shift, cooling pump tripped"
-                .into(),
+        already_done: Some("night shift, cooling pump tripped".into()),
+        late: "entered 2025-09-24 09:05, 6 h 25 min after the act".into(),
         ..Addition::default()
     }
 }
@@ -200,6 +198,7 @@ fn materials() -> Vec<MaterialLot> {
             expiry: expiry.into(),
             used: used.into(),
             n,
+            ..MaterialLot::default()
         })
         .collect()
 }
@@ -244,12 +243,13 @@ fn readings() -> Vec<Reading> {
             ..Reading::default()
         })
         .collect();
-    readings[10].struck = Some(Struck {
+    readings[10].struck = vec![Struck {
         was: "1.0620 SG".into(),
+        now: "1.0260 SG, 16.0 °C".into(),
         by: "Ana Example".into(),
         at: "2025-09-19 08:48".into(),
         why: "slip shows 1.0260; digits swapped".into(),
-    });
+    }];
     readings[15].late =
         "entered 2025-09-24 14:25, 6 h 25 min after the reading: Ana's tablet had no network"
             .into();
@@ -390,8 +390,8 @@ fn signed_addition() -> Addition {
             reason: "strong hydrogen sulfide; cooling repaired; amino lot on hold; urea to be measured before bottling".into(),
             binds: "sha256 9d0c1f6e2b7a48350f1e6d5c4b3a29187766554433221100ffeeddccbbaa9988".into(),
         }],
-        already_done: true,
-        late: "entered 2025-09-18 21:30, 3 h 25 min after the act: pump trip".into(),
+        already_done: Some("pump trip".into()),
+        late: "entered 2025-09-18 21:30, 3 h 25 min after the act".into(),
         proposal: Some(ProposalRef { n: 31, proposed: "150 g".into(), done: "151 g (+0.7 %)".into() }),
         ..Addition::default()
     }
@@ -452,6 +452,7 @@ fn deviation() -> Deviation {
             reason: "ran dry; no off-odour after racking".into(),
             binds: "sha256 41aa0c9df0".into(),
         }),
+        ..Deviation::default()
     }
 }
 
