@@ -7,10 +7,11 @@ use std::fmt::Write as _;
 use std::fs;
 use std::net::TcpListener;
 use std::os::unix::fs::{MetadataExt, PermissionsExt};
+use std::os::unix::process::CommandExt as _;
 use std::path::{Path, PathBuf};
-use std::process::{Command, Stdio};
+use std::process::{ChildStdin, Command, Stdio};
 use std::sync::atomic::{AtomicU32, Ordering};
-use std::sync::{Arc, Mutex, PoisonError, Weak};
+use std::sync::{Arc, OnceLock};
 
 use tempfile::TempDir;
 
@@ -21,6 +22,8 @@ pub struct Cluster {
     programs: PathBuf,
     port: u16,
     databases: AtomicU32,
+    /// Closes with this program, for whoever waits for that.
+    lifeline: Option<ChildStdin>,
 }
 
 impl Cluster {
@@ -44,26 +47,49 @@ impl Cluster {
             .expect("a temporary directory");
         fs::set_permissions(directory.path(), fs::Permissions::from_mode(0o777))
             .expect("permissions of the temporary directory");
-        let cluster = Self { directory, programs, port: free_port(), databases: AtomicU32::new(0) };
+        let cluster = Self {
+            directory,
+            programs,
+            port: free_port(),
+            databases: AtomicU32::new(0),
+            lifeline: None,
+        };
         cluster.init();
         cluster.write_settings(settings);
         cluster.launch();
         cluster
     }
 
-    /// The cluster that tests running at the same time share; it ends with the last of them. It does not write
-    /// through to disk: use [`Cluster::start`] where a power cut is played.
+    /// The cluster that the tests of one program share; it ends with the program, even one that is killed. It does not
+    /// write through to disk: use [`Cluster::start`] where a power cut is played.
     ///
     /// # Panics
     /// As [`Cluster::start`].
     pub fn shared() -> Arc<Self> {
-        static SHARED: Mutex<Weak<Cluster>> = Mutex::new(Weak::new());
-        let mut shared = SHARED.lock().unwrap_or_else(PoisonError::into_inner);
-        shared.upgrade().unwrap_or_else(|| {
-            let cluster = Arc::new(Self::start_with(&["fsync = off"]));
-            *shared = Arc::downgrade(&cluster);
-            cluster
-        })
+        static SHARED: OnceLock<Arc<Cluster>> = OnceLock::new();
+        Arc::clone(SHARED.get_or_init(|| {
+            let mut cluster = Self::start_with(&["fsync = off"]);
+            cluster.end_with_this_program();
+            Arc::new(cluster)
+        }))
+    }
+
+    /// Nothing drops what is static, so a shell waits until this program's end closes its standard input, and then
+    /// stops the server and clears away.
+    fn end_with_this_program(&mut self) {
+        let stop = self.stopping();
+        let mut shell = Command::new("sh");
+        shell
+            .args(["-c", "cat > /dev/null; \"$@\" > /dev/null 2>&1; rm -rf \"$0\""])
+            .arg(self.directory.path())
+            .arg(stop.get_program())
+            .args(stop.get_args())
+            .current_dir("/")
+            .process_group(0) // an interrupt from the keyboard is for the tests, not for the shell
+            .stdin(Stdio::piped())
+            .stdout(Stdio::null())
+            .stderr(Stdio::null());
+        self.lifeline = shell.spawn().expect("a shell").stdin;
     }
 
     /// The port on 127.0.0.1.
@@ -180,6 +206,12 @@ impl Cluster {
         run(&mut control);
     }
 
+    fn stopping(&self) -> Command {
+        let mut control = self.as_server("pg_ctl");
+        control.args(["stop", "--mode=immediate", "--silent", "--pgdata"]).arg(self.data());
+        control
+    }
+
     /// A server program, as a user it agrees to run as.
     fn as_server(&self, program: &str) -> Command {
         self.as_server_program(&self.programs.join(program))
@@ -200,9 +232,7 @@ impl Cluster {
 
 impl Drop for Cluster {
     fn drop(&mut self) {
-        let mut control = self.as_server("pg_ctl");
-        control.args(["stop", "--mode=immediate", "--silent", "--pgdata"]).arg(self.data());
-        let _ = control.stdout(Stdio::null()).stderr(Stdio::null()).status();
+        let _ = self.stopping().stdout(Stdio::null()).stderr(Stdio::null()).status();
     }
 }
 
