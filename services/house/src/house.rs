@@ -21,7 +21,7 @@ use crate::clock::Clock;
 use crate::error::HouseError;
 use crate::ids::Ids;
 use crate::passwords::Passwords;
-use crate::secrets::{Secrets, SignedHead};
+use crate::secrets::{LastSigned, LastSignedError, Secrets, SignedHead};
 use crate::tokens::Tokens;
 
 /// Everything the use cases share. Clones are the same house.
@@ -37,6 +37,7 @@ pub(crate) struct Inner {
     pub(crate) prover: Prover,
     pub(crate) clock: Clock,
     pub(crate) secrets: Arc<Secrets>,
+    pub(crate) last_signed: Arc<LastSigned>,
     pub(crate) passwords: Passwords,
     pub(crate) tokens: Tokens,
 }
@@ -49,10 +50,13 @@ impl House {
     pub async fn open(db: Db, secrets: Secrets, clock: Clock) -> Result<Self, HouseError> {
         let secrets = Arc::new(secrets);
         let tokens = Tokens::new(secrets.token_key(), "tallystave")?;
-        let writers = Writers::new(db.clone(), tools(&secrets, &clock)?);
+        let last_signed =
+            Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
+        let writers = Writers::new(db.clone(), tools(&secrets, &clock, &last_signed));
         let inner = Inner {
             db,
             writers,
+            last_signed,
             prover: Prover::default(),
             clock,
             secrets,
@@ -61,7 +65,27 @@ impl House {
         };
         let house = Self { inner: Arc::new(inner) };
         house.only_simulations_on_a_driven_clock().await?;
+        house.continues_what_was_signed().await?;
         Ok(house)
+    }
+
+    /// A book put back from an older state, or changed behind our back, is not signed again under the same key.
+    async fn continues_what_was_signed(&self) -> Result<(), HouseError> {
+        let failed = |error: LastSignedError| HouseError::Failed(error.to_string());
+        let memory = &self.inner.last_signed;
+        for site in self.sites().await? {
+            let place = log_of(&site.origin);
+            let Some(old) = memory.last(place).map_err(failed)? else { continue };
+            let mut held = self.inner.db.reader().await?;
+            let head = store::log::head(&mut held.conn(), site.number).await?;
+            let now = SignedHead { size: head.frontier.size(), root: *head.root.as_bytes() };
+            let root = match old.size <= now.size {
+                true => store::tiles::root_at(&mut held.conn(), site.number, old.size).await?,
+                false => head.root,
+            };
+            memory.check(place, now, |old| old.root == *root.as_bytes()).map_err(failed)?;
+        }
+        Ok(())
     }
 
     /// A driven clock opens only books that were founded as simulations, and goes on from their last entry.
@@ -281,30 +305,34 @@ pub struct Asked {
 }
 
 /// Clock, ids and signatures for the writer.
-fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
-    let last = Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
+fn tools(secrets: &Arc<Secrets>, clock: &Clock, last: &Arc<LastSigned>) -> Tools {
     let (time, id_time, key) = (clock.clone(), clock.clone(), Arc::clone(secrets));
-    Ok(Tools {
+    let (signed_before, remembered) = (Arc::clone(last), Arc::clone(last));
+    Tools {
         clock: Arc::new(move || time.now()),
-        draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|_| Uuid::nil())),
+        // Without randomness the command fails, and only it: the writer catches the panic.
+        draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|error| panic!("{error}"))),
         sign: Arc::new(move |origin: &str, size: u64, root: &Hash| {
+            let old = signed_before.last(log_of(origin)).map_err(|e| e.to_string())?;
+            if old.is_some_and(|old| size < old.size) {
+                return Err(format!("{origin} was longer when it was signed last"));
+            }
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(key.log_key()).map_err(|e| e.to_string())
         }),
         committed: Arc::new(move |origin: &str, head: &TreeHead| {
-            let site = SiteId(site_of_origin(origin));
             let signed = SignedHead { size: head.size, root: *head.root.as_bytes() };
-            if let Err(error) = last.store(site, signed) {
+            if let Err(error) = remembered.store(log_of(origin), signed) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
         }),
-    })
+    }
 }
 
-/// A file name for an origin: the memory of signed heads is kept by log, not by database.
-fn site_of_origin(origin: &str) -> Uuid {
+/// The memory of signed heads is kept by the log's name, not by what a database says its site is.
+fn log_of(origin: &str) -> SiteId {
     let digest = <sha2::Sha256 as sha2::Digest>::digest(origin.as_bytes());
     let mut bytes = [0; 16];
     bytes.copy_from_slice(&digest[..16]);
-    uuid::Builder::from_custom_bytes(bytes).into_uuid()
+    SiteId(uuid::Builder::from_custom_bytes(bytes).into_uuid())
 }
