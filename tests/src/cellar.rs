@@ -251,7 +251,7 @@ impl Cellar {
     /// The body of a gravity reading.
     pub fn gravity_body(&self, sg: &str) -> Value {
         json!({"taken_at": self.now(), "values": [
-            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": "20.0"}]})
+            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": {"value": "20.0", "unit": "Cel"}}]})
     }
 
     /// Records the nitrogen of a sample taken now: ammonium nitrogen and primary amino nitrogen in mg/L.

@@ -119,7 +119,8 @@ pub(crate) struct NewBatch {
 }
 
 impl NewBatch {
-    fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
+    /// What it asks of the book.
+    pub(crate) fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
         let mut faults = Faults::default();
         let volume = faults.amount("/volume", &self.volume, Dimension::Volume);
         let liquid = match &self.liquid {
