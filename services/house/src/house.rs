@@ -229,6 +229,7 @@ impl House {
         store::migrate::check(&self.inner.db).await?;
         for site in self.sites().await? {
             self.head(&site).await?;
+            self.inner.writers.check_continues(&site).await?;
         }
         Ok(())
     }
@@ -283,6 +284,7 @@ pub struct Asked {
 /// Clock, ids and signatures for the writer.
 fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
     let last = Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
+    let memory = Arc::clone(&last);
     let (time, id_time, key) = (clock.clone(), clock.clone(), Arc::clone(secrets));
     Ok(Tools {
         clock: Arc::new(move || time.now()),
@@ -297,6 +299,10 @@ fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
             if let Err(error) = last.store(site, signed) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
+        }),
+        remembered: Arc::new(move |origin: &str| {
+            let signed = memory.last(SiteId(site_of_origin(origin))).map_err(|e| e.to_string())?;
+            Ok(signed.map(|head| TreeHead { size: head.size, root: Hash(head.root) }))
         }),
     })
 }
