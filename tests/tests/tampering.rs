@@ -127,7 +127,7 @@ fn a_book_put_back_from_an_older_copy_is_not_written_on() {
     cellar.nobody().get("/readyz").expect_problem(503, "unavailable");
     assert_eq!(cellar.size(), size);
     assert!(
-        cellar.program.complaints().contains("already signed"),
+        cellar.program.complaints().contains("were signed before"),
         "{}",
         cellar.program.complaints()
     );
