@@ -73,7 +73,7 @@ fn describe_answers(document: &mut Document) {
         if let RefOr::T(answer) = answer
             && answer.description.is_empty()
         {
-            answer.description = meaning(status).to_owned();
+            meaning(status).clone_into(&mut answer.description);
         }
     }
 }
