@@ -105,31 +105,3 @@ on_both_engines! {
         }
     }
 }
-
-#[test]
-fn a_book_put_back_from_an_older_copy_is_not_written_on() {
-    let (mut cellar, _) = book(Engine::Sqlite);
-    let batch = cellar.ana.get("/v1/batches?code=B1").expect(200).items()[0]["id"].clone();
-    let batch = batch.as_str().unwrap().to_owned();
-    let home = cellar.program.home().clone();
-    assert!(cellar.program.terminate().success());
-    let copy = home.data().join("copy.db");
-    std::fs::copy(home.file(), &copy).unwrap();
-    cellar.restart();
-    cellar.gravity(&batch, "1.0930");
-    assert!(cellar.program.terminate().success());
-
-    std::fs::copy(&copy, home.file()).unwrap();
-    cellar.restart();
-    let size = cellar.size();
-    let path = format!("/v1/batches/{batch}/readings");
-    let refused = cellar.ana.post(&path, &cellar.gravity_body("1.0920"));
-    assert!(refused.status >= 500, "{refused:?}");
-    cellar.nobody().get("/readyz").expect_problem(503, "unavailable");
-    assert_eq!(cellar.size(), size);
-    assert!(
-        cellar.program.complaints().contains("were signed before"),
-        "{}",
-        cellar.program.complaints()
-    );
-}

@@ -61,7 +61,16 @@ impl House {
         };
         let house = Self { inner: Arc::new(inner) };
         house.only_simulations_on_a_driven_clock().await?;
+        house.continues_what_was_signed().await?;
         Ok(house)
+    }
+
+    /// A book put back from an older state, or changed behind our back, is not signed again under the same key.
+    async fn continues_what_was_signed(&self) -> Result<(), HouseError> {
+        for site in self.sites().await? {
+            self.inner.writers.check_continues(&site).await?;
+        }
+        Ok(())
     }
 
     /// A driven clock opens only books that were founded as simulations, and goes on from their last entry.
@@ -229,9 +238,8 @@ impl House {
         store::migrate::check(&self.inner.db).await?;
         for site in self.sites().await? {
             self.head(&site).await?;
-            self.inner.writers.check_continues(&site).await?;
         }
-        Ok(())
+        self.continues_what_was_signed().await
     }
 
     /// The newest head of a site's log, its signature checked.
@@ -288,29 +296,29 @@ fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
     let (time, id_time, key) = (clock.clone(), clock.clone(), Arc::clone(secrets));
     Ok(Tools {
         clock: Arc::new(move || time.now()),
-        draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|_| Uuid::nil())),
+        // Without randomness the command fails, and only it: the writer catches the panic.
+        draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|error| panic!("{error}"))),
         sign: Arc::new(move |origin: &str, size: u64, root: &Hash| {
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(key.log_key()).map_err(|e| e.to_string())
         }),
         committed: Arc::new(move |origin: &str, head: &TreeHead| {
-            let site = SiteId(site_of_origin(origin));
             let signed = SignedHead { size: head.size, root: *head.root.as_bytes() };
-            if let Err(error) = last.store(site, signed) {
+            if let Err(error) = last.store(log_of(origin), signed) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
         }),
         remembered: Arc::new(move |origin: &str| {
-            let signed = memory.last(SiteId(site_of_origin(origin))).map_err(|e| e.to_string())?;
+            let signed = memory.last(log_of(origin)).map_err(|e| e.to_string())?;
             Ok(signed.map(|head| TreeHead { size: head.size, root: Hash(head.root) }))
         }),
     })
 }
 
-/// A file name for an origin: the memory of signed heads is kept by log, not by database.
-fn site_of_origin(origin: &str) -> Uuid {
+/// The memory of signed heads is kept by the log's name, not by what a database says its site is.
+fn log_of(origin: &str) -> SiteId {
     let digest = <sha2::Sha256 as sha2::Digest>::digest(origin.as_bytes());
     let mut bytes = [0; 16];
     bytes.copy_from_slice(&digest[..16]);
-    uuid::Builder::from_custom_bytes(bytes).into_uuid()
+    SiteId(uuid::Builder::from_custom_bytes(bytes).into_uuid())
 }

@@ -6,6 +6,7 @@
 pub mod assessing;
 pub mod caller;
 pub mod clock;
+pub mod correction;
 pub mod error;
 pub mod founding;
 pub mod house;

@@ -11,7 +11,7 @@ use domain::ids::{CommandId, DeviationId};
 use domain::ledger::canonical;
 use domain::ledger::note::Checkpoint;
 use domain::ledger::tree::{Frontier, Hash};
-use domain::stamp::Stamp;
+use domain::stamp::{Micros, Stamp};
 use store::writer::WriteError;
 
 use crate::book::{Book, Cellar, at, grams, micros, refusal};
@@ -353,7 +353,7 @@ async fn a_dose_told_to_the_minute_still_carries_its_proposal_out_once() {
     let book = Book::found().await;
     let cellar = book.cellar().await;
     book.read_at(&cellar, "09-22T10:00", "1.0685").await;
-    book.house.set_clock(at("09-22T10:10").at.plus_minutes(1)).unwrap();
+    book.house.set_clock(Micros(at("09-22T10:10").at.0 + 30_000_000)).unwrap();
     let (proposal, _) = book.propose(&cellar, "09-22T10:10", cellar.autolysate, "400").await;
     let dose = |minute| book.dose(&cellar, at(minute), proposal, cellar.autolysate, "400");
     dose("09-22T10:10").await.unwrap();

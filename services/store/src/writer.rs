@@ -205,10 +205,11 @@ impl Writers {
     /// # Errors
     /// [`WriteError::Unsigned`], or that it cannot be read.
     pub async fn check_continues(&self, site: &Site) -> Result<(), WriteError> {
+        let remembered = continuing::remembered(&self.shared.tools, site)?;
         let mut held = self.shared.db.reader().await?;
         let mut conn = held.conn();
         let head = log::head(&mut conn, site.number).await?;
-        continuing::check(&mut conn, &self.shared.tools, site, &head.tree_head()).await
+        continuing::check(&mut conn, site, remembered, &head.tree_head()).await
     }
 
     /// What was done so far.

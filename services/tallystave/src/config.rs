@@ -28,6 +28,8 @@ pub(crate) enum Command {
     Rebuild(Rebuild),
     /// Prints a one-time link for founding a first or a further site.
     FoundingLink(FoundingLink),
+    /// Says in the book that the server's clock was set back for good, so that writing can go on.
+    CorrectClock(CorrectClock),
     /// Prints the description of the REST interface, OpenAPI 3.1.
     Openapi,
     /// Founds a simulated book and runs the main job on the invented demo scenario.
@@ -103,6 +105,20 @@ pub(crate) struct FoundingLink {
     /// The address people use.
     #[arg(long, env = "TALLYSTAVE_PUBLIC_URL", default_value = "http://127.0.0.1:7420")]
     pub(crate) public_url: String,
+}
+
+/// See [`Command::CorrectClock`].
+#[derive(Args, Clone, Debug)]
+pub(crate) struct CorrectClock {
+    /// The book.
+    #[command(flatten)]
+    pub(crate) book: Book,
+    /// Code of the site.
+    #[arg(long)]
+    pub(crate) site: String,
+    /// Why the clock was wrong.
+    #[arg(long)]
+    pub(crate) reason: String,
 }
 
 /// See [`Command::Demo`].

@@ -11,7 +11,7 @@ use std::process::ExitCode;
 use clap::Parser as _;
 use house::clock::Clock;
 
-use crate::config::{Cli, Command, FoundingLink};
+use crate::config::{Cli, Command, CorrectClock, FoundingLink};
 
 #[tokio::main]
 async fn main() -> ExitCode {
@@ -38,6 +38,7 @@ async fn run(command: Command) -> anyhow::Result<()> {
         Command::Verify(book) => check::verify(&book).await,
         Command::Rebuild(rebuild) => check::rebuild(&rebuild).await,
         Command::FoundingLink(link) => founding_link(link).await,
+        Command::CorrectClock(correct) => correct_clock(correct).await,
         Command::Openapi => {
             println!("{}", api::document().to_pretty_json()?);
             Ok(())
@@ -51,5 +52,14 @@ async fn founding_link(link: FoundingLink) -> anyhow::Result<()> {
     let token = house.founding_token().await?;
     println!("{}/v1/founding#{token}", link.public_url);
     house.close().await;
+    Ok(())
+}
+
+async fn correct_clock(correct: CorrectClock) -> anyhow::Result<()> {
+    let house = serve::open(&correct.book, Clock::System).await?;
+    let corrected = house.correct_clock(&correct.site, correct.reason).await;
+    house.close().await;
+    let (previous, now) = corrected?;
+    println!("{}: the log ended at {previous}; it goes on from {now}", correct.site);
     Ok(())
 }

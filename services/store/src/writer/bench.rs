@@ -74,7 +74,8 @@ impl Bench {
         let head = log::lock_head(conn, self.site.number).await?;
         let stands = head.tree_head();
         if self.left != Some(stands) {
-            continuing::check(conn, tools, &self.site, &stands).await?;
+            let remembered = continuing::remembered(tools, &self.site)?;
+            continuing::check(conn, &self.site, remembered, &stands).await?;
         }
         tiles::catch_up(conn, self.site.number, &mut self.edge, &head).await?;
         let mut sheet = Sheet::new(head);

@@ -10,17 +10,24 @@ use super::{Tools, WriteError};
 use crate::sites::Site;
 use crate::{Conn, StoreError, tiles};
 
-/// Compares the locked head with what is remembered beside the key.
+/// What is remembered of a site's log. A reader asks before it reads the head, which may only have grown since.
+///
+/// # Errors
+/// [`WriteError::Unsigned`] if the memory cannot be read.
+pub(super) fn remembered(tools: &Tools, site: &Site) -> Result<Option<TreeHead>, WriteError> {
+    (tools.remembered)(&site.origin).map_err(WriteError::Unsigned)
+}
+
+/// Compares a head with what is remembered.
 ///
 /// # Errors
 /// [`WriteError::Unsigned`] if the log is shorter than what was signed, or has another beginning.
 pub(super) async fn check(
     conn: &mut Conn<'_>,
-    tools: &Tools,
     site: &Site,
+    remembered: Option<TreeHead>,
     head: &TreeHead,
 ) -> Result<(), WriteError> {
-    let remembered = (tools.remembered)(&site.origin).map_err(WriteError::Unsigned)?;
     let Some(signed) = remembered else { return Ok(()) };
     if head.size < signed.size {
         return Err(WriteError::Unsigned(format!(
