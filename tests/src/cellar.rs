@@ -125,7 +125,7 @@ impl Cellar {
         for set in self.caro.get("/v1/rule-sets").expect(200).items() {
             let path = format!("/v1/rule-sets/{}/adoptions", set["id"].as_str().expect("an id"));
             let body = json!({"standing": "production", "digest": set["digest"], "from": from});
-            let _ = self.caro.post(&path, &body).expect(201);
+            self.caro.post(&path, &body).expect(201);
         }
     }
 
@@ -149,7 +149,7 @@ impl Cellar {
     /// If the clock is not driven.
     pub fn drive_to(&mut self, now: &str) {
         assert!(self.now.is_some(), "a real book runs on the machine's clock");
-        let _ = self.dov.request("POST", "/v1/clock").json(&json!({"now": now})).send().expect(200);
+        self.dov.request("POST", "/v1/clock").json(&json!({"now": now})).send().expect(200);
         self.now = Some(now.to_owned());
     }
 

@@ -1,8 +1,8 @@
 //! The last head this instance signed for each site, kept outside the database.
 //!
 //! A database put back from an old backup, or forked by a second instance, would sign a history that contradicts one
-//! already handed out. The writer therefore asks [`LastSigned::check`] before it signs, and after the commit tells
-//! [`LastSigned::store`] what it signed; a commit that failed leaves no trace here.
+//! already handed out. The writer therefore asks [`LastSigned::last`] and compares before it signs, and after the
+//! commit tells [`LastSigned::store`] what it signed; a commit that failed leaves no trace here.
 //!
 //! One record of 86 bytes per site, written in place by one `pwrite` and **not** synced: an fsync for each commit
 //! would halve the rate of a single client. After a power cut the file may lag behind the log, which is harmless
@@ -30,33 +30,9 @@ pub struct SignedHead {
     pub root: [u8; 32],
 }
 
-/// Why a head must not be signed.
+/// Why what was signed last is not known.
 #[derive(Debug, thiserror::Error)]
 pub enum LastSignedError {
-    /// The log is shorter than one that was signed before.
-    #[error(
-        "site {site}: this instance already signed {signed} entries, but the database holds {offered}: \
-         it was put back from an older state; bring back the newer one"
-    )]
-    Behind {
-        /// The site.
-        site: SiteId,
-        /// The size signed before.
-        signed: u64,
-        /// The size now.
-        offered: u64,
-    },
-    /// The log does not continue the one that was signed before.
-    #[error(
-        "site {site}: the log does not continue the {signed} entries this instance signed: \
-         it was changed or forked; compare with the last head that left the house"
-    )]
-    Forked {
-        /// The site.
-        site: SiteId,
-        /// The size signed before.
-        signed: u64,
-    },
     /// The record on disk is not one of ours.
     #[error("{path} is damaged: compare the log with the last head that left the house, then remove the file",
         path = .0.display())]
@@ -91,28 +67,6 @@ impl LastSigned {
         self.with_file(site, read)?.ok_or_else(|| LastSignedError::Damaged(self.path(site)))
     }
 
-    /// Whether `head` may be signed: not shorter than the last, the same root at the same size, and if longer,
-    /// `is_consistent` must say that the log still holds the old head as its beginning.
-    ///
-    /// # Errors
-    /// [`LastSignedError::Behind`], [`LastSignedError::Forked`], or that the record cannot be read.
-    pub fn check(
-        &self,
-        site: SiteId,
-        head: SignedHead,
-        is_consistent: impl FnOnce(&SignedHead) -> bool,
-    ) -> Result<(), LastSignedError> {
-        let Some(old) = self.last(site)? else {
-            return Ok(());
-        };
-        if head.size < old.size {
-            return Err(LastSignedError::Behind { site, signed: old.size, offered: head.size });
-        }
-        let continues =
-            if head.size == old.size { head.root == old.root } else { is_consistent(&old) };
-        if continues { Ok(()) } else { Err(LastSignedError::Forked { site, signed: old.size }) }
-    }
-
     /// Remembers `head` as the last one signed.
     ///
     /// # Errors
@@ -120,20 +74,6 @@ impl LastSigned {
     pub fn store(&self, site: SiteId, head: SignedHead) -> Result<(), LastSignedError> {
         let record = write_record(&head);
         self.with_file(site, |file| file.write_all_at(record.as_bytes(), 0))
-    }
-
-    /// [`LastSigned::check`] and, if it agrees, [`LastSigned::store`]: for heads of what is already committed.
-    ///
-    /// # Errors
-    /// Those of both.
-    pub fn check_and_store(
-        &self,
-        site: SiteId,
-        head: SignedHead,
-        is_consistent: impl FnOnce(&SignedHead) -> bool,
-    ) -> Result<(), LastSignedError> {
-        self.check(site, head, is_consistent)?;
-        self.store(site, head)
     }
 
     fn path(&self, site: SiteId) -> PathBuf {
@@ -202,39 +142,15 @@ mod tests {
     }
 
     #[test]
-    fn a_longer_log_that_holds_the_old_head_is_accepted_and_remembered_over_a_restart() {
+    fn what_was_signed_last_is_remembered_over_a_restart() {
         let home = tempfile::tempdir().unwrap();
         let memory = LastSigned::in_directory(home.path().to_owned());
         assert_eq!(memory.last(SITE).unwrap(), None);
-        memory.check_and_store(SITE, head(1, 1), |_| unreachable!("nothing was signed")).unwrap();
-        memory.check_and_store(SITE, head(9, 2), |old| *old == head(1, 1)).unwrap();
+        memory.store(SITE, head(1, 1)).unwrap();
+        memory.store(SITE, head(9, 2)).unwrap();
         let restarted = LastSigned::in_directory(home.path().to_owned());
         assert_eq!(restarted.last(SITE).unwrap(), Some(head(9, 2)));
         assert_eq!(restarted.last(SiteId(Uuid::from_u128(8))).unwrap(), None);
-    }
-
-    #[test]
-    fn a_stale_restore_and_a_fork_are_refused_and_change_nothing() {
-        let home = tempfile::tempdir().unwrap();
-        let memory = LastSigned::in_directory(home.path().to_owned());
-        memory.store(SITE, head(9, 2)).unwrap();
-        let stale = memory.check_and_store(SITE, head(8, 1), |_| true);
-        assert!(matches!(stale, Err(LastSignedError::Behind { signed: 9, offered: 8, .. })));
-        let other_root = memory.check_and_store(SITE, head(9, 3), |_| true);
-        assert!(matches!(other_root, Err(LastSignedError::Forked { signed: 9, .. })));
-        let other_past = memory.check_and_store(SITE, head(10, 3), |_| false);
-        assert!(matches!(other_past, Err(LastSignedError::Forked { signed: 9, .. })));
-        assert_eq!(memory.last(SITE).unwrap(), Some(head(9, 2)));
-        memory.check_and_store(SITE, head(9, 2), |_| false).unwrap();
-    }
-
-    #[test]
-    fn a_check_alone_remembers_nothing_so_a_failed_commit_leaves_no_trace() {
-        let home = tempfile::tempdir().unwrap();
-        let memory = LastSigned::in_directory(home.path().to_owned());
-        memory.store(SITE, head(1, 1)).unwrap();
-        memory.check(SITE, head(2, 2), |_| true).unwrap();
-        assert_eq!(memory.last(SITE).unwrap(), Some(head(1, 1)));
     }
 
     #[test]

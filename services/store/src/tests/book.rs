@@ -8,7 +8,7 @@ use domain::book::role::Role;
 use domain::ids::{CommandId, PersonId, SiteId};
 use domain::ledger::entry::{Actor, Via};
 use domain::ledger::note::{Checkpoint, VerifierKey};
-use domain::ledger::tree::Hash;
+use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::Micros;
 use ed25519_dalek::SigningKey;
 use tempfile::TempDir;
@@ -140,8 +140,12 @@ impl Book {
     }
 
     pub(super) async fn size(&self) -> u64 {
+        self.head().await.size
+    }
+
+    pub(super) async fn head(&self) -> TreeHead {
         let mut held = self.db.reader().await.unwrap();
-        crate::log::head(&mut held.conn(), self.site.number).await.unwrap().frontier.size()
+        crate::log::head(&mut held.conn(), self.site.number).await.unwrap().tree_head()
     }
 
     /// The whole log verifies and every table equals a fresh replay.
@@ -189,5 +193,6 @@ pub(super) fn tools(
             checkpoint.sign(&key()).map_err(|error| error.to_string())
         }),
         committed: Arc::new(move |_, head| committed.lock().unwrap().push(head.size)),
+        remembered: Arc::new(|_| Ok(None)),
     }
 }

@@ -7,6 +7,7 @@ use std::time::Duration;
 
 use domain::book::command::{Act, Amend, AmendTo, CorrectClock, DirectoryPerson, Enrol};
 use domain::ids::{BatchId, PersonId};
+use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::{Micros, Stamp};
 use uuid::Uuid;
 
@@ -328,6 +329,39 @@ async fn a_head_that_the_key_refuses_is_not_committed() {
         assert!(matches!(answer, Err(WriteError::Unsigned(_))));
         assert_eq!(book.size().await, size);
         writers.close().await;
+    })
+    .await;
+}
+
+/// What is remembered beside the key, as another writer of the same book finds it.
+async fn writes_on(book: &Book, size: u64, root: Hash) -> Result<u64, WriteError> {
+    let mut mindful = tools(3, &book.clock, &book.committed, &book.fuse);
+    mindful.remembered = Arc::new(move |_| Ok(Some(TreeHead { size, root })));
+    let writers = Writers::new(book.db.clone(), mindful);
+    let continues = writers.check_continues(&book.site).await;
+    let answer = writers.submit(book.site.id, book.command(reading(batch(), "3.5"))).await;
+    writers.close().await;
+    assert_eq!(continues.is_ok(), answer.is_ok(), "{continues:?}");
+    answer.map(|receipt| receipt.entries[0].seq)
+}
+
+#[tokio::test]
+async fn a_log_that_does_not_continue_what_was_signed_before_is_not_written_on() {
+    on_both(async |book: &Book| {
+        acts::furnish(book).await;
+        let older = book.head().await;
+        book.act(reading(batch(), "3.5")).await.unwrap();
+        let newest = book.head().await;
+        for (size, root) in
+            [(newest.size + 1, newest.root), (newest.size, older.root), (older.size, newest.root)]
+        {
+            let refused = writes_on(book, size, root).await;
+            assert!(matches!(refused, Err(WriteError::Unsigned(_))), "{size}: {refused:?}");
+        }
+        assert_eq!(book.head().await, newest);
+        assert_eq!(writes_on(book, newest.size, newest.root).await.unwrap(), newest.size);
+        assert_eq!(writes_on(book, older.size, older.root).await.unwrap(), newest.size + 1);
+        book.deep_check().await;
     })
     .await;
 }

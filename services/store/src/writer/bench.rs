@@ -13,7 +13,7 @@ use domain::stamp::Micros;
 
 use super::drawn::Drawn;
 use super::sheet::Sheet;
-use super::{Answer, Receipt, Tools, WriteError, clock};
+use super::{Answer, Receipt, Tools, WriteError, clock, continuing};
 use crate::commands::{self, Earlier};
 use crate::error::chain;
 use crate::read;
@@ -32,6 +32,8 @@ pub(super) struct Bench {
     /// Between groups nothing lies here but rule sets, which never change.
     desk: Desk,
     edge: Edge,
+    /// The head that the latest group left: a log that still stands there needs no comparing with what was signed.
+    left: Option<TreeHead>,
     /// Subjects of earlier groups, and in which they were last needed. Good only if the locked counter agrees.
     shelf: HashMap<Subject, (Arc<Loaded>, u64)>,
     /// What the latest group had on the desk.
@@ -54,6 +56,7 @@ impl Bench {
             site,
             desk,
             edge: Edge::default(),
+            left: None,
             shelf: HashMap::new(),
             touched: HashSet::new(),
             group: 0,
@@ -69,6 +72,11 @@ impl Bench {
     ) -> Result<Done, WriteError> {
         self.group += 1;
         let head = log::lock_head(conn, self.site.number).await?;
+        let stands = head.tree_head();
+        if self.left != Some(stands) {
+            let remembered = continuing::remembered(tools, &self.site)?;
+            continuing::check(conn, &self.site, remembered, &stands).await?;
+        }
         tiles::catch_up(conn, self.site.number, &mut self.edge, &head).await?;
         let mut sheet = Sheet::new(head);
         let ids: Vec<_> = commands.iter().map(|command| command.id).collect();
@@ -87,6 +95,7 @@ impl Bench {
             0 => None,
             _ => Some(sheet.write(conn, &self.site, &mut self.edge, tools).await?),
         };
+        self.left = Some(head.unwrap_or(stands));
         let entries = sheet.len();
         self.tidy(sheet.subjects);
         Ok(Done { answers, head, entries })
