@@ -160,7 +160,8 @@ on_both_engines! {
         let it = Referred::new(engine);
         let signed = it.sign(&it.cellar.ben, &it.signature(BEN)).expect(201);
         assert_eq!(signed.text("/entries/0/kind"), "signoff.given");
-        assert_eq!(signed.text("/entries/0/actor"), it.cellar.people[1]);
+        let ben = format!("person:{}", it.cellar.people[1]);
+        assert_eq!(signed.text("/entries/0/actor"), ben);
         assert_eq!(signed.text("/entries/0/body/binds"), it.proposed.text("/shown"));
         let said = String::from_utf8(signed.bytes).unwrap();
         assert!(!said.contains(BEN), "the secret never stands in the log");

@@ -168,7 +168,7 @@ async fn a_record_as_of_n_has_the_same_bytes_after_a_hundred_more_entries() {
     }
     let reason = "leaves".to_owned();
     let role = domain::book::role::Role::Lead;
-    book.act(&book.caro, Act::Withdraw(book.ben.person, role, Some(reason))).await.unwrap();
+    book.act(&book.dov, Act::Withdraw(book.ben.person, role, Some(reason))).await.unwrap();
     book.adopt().await;
     let receipt = Book::receipt(
         cellar.dap,

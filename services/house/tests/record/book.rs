@@ -35,6 +35,7 @@ pub(crate) struct Book {
     pub(crate) house: House,
     pub(crate) db: Db,
     pub(crate) site: Site,
+    pub(crate) dov: Caller,
     pub(crate) ana: Caller,
     pub(crate) ben: Caller,
     pub(crate) caro: Caller,
@@ -65,7 +66,7 @@ fn quantity(text: &str, unit: &str) -> Quantity {
 }
 
 impl Book {
-    /// Founded on 2025-09-08, with Ana in the cellar, Ben leading and Caro for quality.
+    /// Founded on 2025-09-08 by Dov, with Ana in the cellar, Ben leading and Caro for quality.
     pub(crate) async fn found() -> Self {
         let directory = tempfile::tempdir().unwrap();
         let db = Db::open(&Place::Directory(directory.path().to_owned())).await.unwrap();
@@ -105,7 +106,7 @@ impl Book {
         }
         let [ana, ben, caro] = people.try_into().unwrap();
         let site = house.site(site).await.unwrap();
-        Self { house, db, site, ana, ben, caro, directory }
+        Self { house, db, site, dov, ana, ben, caro, directory }
     }
 
     /// Drives the clock.
