@@ -3,7 +3,7 @@ create table site (
   number bigint not null primary key,
   id     bytea   not null unique check (octet_length(id) = 16),
   code   text    not null unique,
-  origin text    not null
+  origin text    not null unique
 );
 
 -- What the projection tables were made from.

@@ -3,7 +3,7 @@ create table site (
   number integer not null primary key,
   id     blob    not null unique check (length(id) = 16),
   code   text    not null unique,
-  origin text    not null
+  origin text    not null unique
 ) strict;
 
 -- What the projection tables were made from.

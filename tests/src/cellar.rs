@@ -336,15 +336,19 @@ pub fn deep_check(home: &Home) {
 
 /// Founds a site with Dov as its administrator.
 pub fn found(nobody: &Client, token: &str, code: &str, simulation: bool) -> Answer {
+    nobody.post("/v1/founding", &founding(token, code, simulation))
+}
+
+/// The body of a founding.
+pub fn founding(token: &str, code: &str, simulation: bool) -> Value {
     let (login, name, password, _) = PEOPLE[3];
     let origin = format!("{}.example/book", code.to_lowercase());
-    let body = json!({"token": token, "code": code, "name": "Example Works", "origin": origin,
+    json!({"token": token, "code": code, "name": "Example Works", "origin": origin,
         "time_zone": "America/Los_Angeles", "simulation": simulation,
         "premises": [
             {"code": "BW", "kind": "bonded_wine_premises", "name": "Wine premises"},
             {"code": "DSP", "kind": "distilled_spirits_plant", "name": "Spirits plant"}],
-        "admin": {"login": login, "name": name, "password": password}});
-    nobody.post("/v1/founding", &body)
+        "admin": {"login": login, "name": name, "password": password}})
 }
 
 fn enrol(admin: &Client, index: usize) -> Answer {

@@ -21,11 +21,12 @@ pub(crate) fn print(method: &str, path: &str, body: &Value) -> Result<[u8; 32], 
     Ok(*digest.as_bytes())
 }
 
-/// The body without these members.
+/// The body without these members, named by JSON pointers.
 pub(crate) fn without(mut body: Value, secrets: &[&str]) -> Value {
-    if let Some(members) = body.as_object_mut() {
-        for secret in secrets {
-            members.remove(*secret);
+    for secret in secrets {
+        let Some((within, member)) = secret.rsplit_once('/') else { continue };
+        if let Some(members) = body.pointer_mut(within).and_then(Value::as_object_mut) {
+            members.remove(member);
         }
     }
     body

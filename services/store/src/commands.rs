@@ -6,11 +6,12 @@ use domain::ids::CommandId;
 use sqlx::QueryBuilder;
 use uuid::Uuid;
 
-use crate::StoreError;
 use crate::bulk::padded;
 use crate::db::{Conn, on};
 use crate::log::unsigned;
 use crate::sites::SiteNumber;
+use crate::writer::{Receipt, WriteError};
+use crate::{StoreError, log};
 
 /// A command carried out earlier.
 #[derive(Clone, Debug, Eq, PartialEq)]
@@ -18,6 +19,38 @@ pub(crate) struct Earlier {
     pub(crate) first_seq: u64,
     pub(crate) entries: i64,
     pub(crate) print: Vec<u8>,
+}
+
+/// The answer to a command that was carried out, the same as the first time; `None` if it never was.
+///
+/// # Errors
+/// [`StoreError`].
+pub async fn answer(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    id: CommandId,
+    print: &[u8; 32],
+) -> Result<Option<Result<Receipt, WriteError>>, StoreError> {
+    match find(conn, site, &[id]).await?.get(&id) {
+        Some(earlier) => repeat(conn, site, print, earlier).await.map(Some),
+        None => Ok(None),
+    }
+}
+
+/// The answer to a command that was carried out, from the log.
+pub(crate) async fn repeat(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    print: &[u8; 32],
+    earlier: &Earlier,
+) -> Result<Result<Receipt, WriteError>, StoreError> {
+    if earlier.print != print {
+        return Ok(Err(WriteError::KeyReused));
+    }
+    let stored = log::entries(conn, site, earlier.first_seq, earlier.entries).await?;
+    let entries =
+        stored.iter().map(|s| s.entry().map(Into::into)).collect::<Result<_, StoreError>>()?;
+    Ok(Ok(Receipt { entries }))
 }
 
 /// Those of the given commands that were carried out, in one statement for a group.

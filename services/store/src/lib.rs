@@ -6,7 +6,7 @@
 
 pub mod blobs;
 mod bulk;
-mod commands;
+pub mod commands;
 pub mod db;
 pub mod directory;
 mod error;

@@ -34,12 +34,13 @@ struct SiteRow {
 
 const BY_ID: &str = "select number, id, code, origin from site where id = $1";
 const BY_CODE: &str = "select number, id, code, origin from site where code = $1";
+const BY_ORIGIN: &str = "select number, id, code, origin from site where origin = $1";
 const ALL: &str = "select number, id, code, origin from site order by number";
 const REGISTER: &str = "insert into site (number, id, code, origin) \
     select coalesce(max(number), 0) + 1, $1, $2, $3 from site returning number";
 
 #[cfg(test)]
-pub(crate) const TEXTS: &[&str] = &[BY_ID, BY_CODE, ALL, REGISTER];
+pub(crate) const TEXTS: &[&str] = &[BY_ID, BY_CODE, BY_ORIGIN, ALL, REGISTER];
 
 /// The site of this id.
 ///
@@ -63,6 +64,16 @@ pub async fn by_code(conn: &mut Conn<'_>, code: &str) -> Result<Option<Site>, St
     row.map(site_of).transpose()
 }
 
+/// The site whose log has this name.
+///
+/// # Errors
+/// [`StoreError::Database`].
+pub async fn by_origin(conn: &mut Conn<'_>, origin: &str) -> Result<Option<Site>, StoreError> {
+    let row: Option<SiteRow> =
+        on!(conn, |c| sqlx::query_as(BY_ORIGIN).bind(origin).fetch_optional(c).await)?;
+    row.map(site_of).transpose()
+}
+
 /// Every site.
 ///
 /// # Errors
@@ -75,7 +86,7 @@ pub async fn all(conn: &mut Conn<'_>) -> Result<Vec<Site>, StoreError> {
 /// Gives a site its number, so that its founding can be written as the first entry of its log.
 ///
 /// # Errors
-/// [`StoreError::Database`], also if the id or the code is taken.
+/// [`StoreError::Database`], also if the id, the code or the origin is taken.
 pub async fn register(
     conn: &mut Conn<'_>,
     id: SiteId,

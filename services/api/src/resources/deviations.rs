@@ -185,7 +185,7 @@ pub(crate) async fn resolve(
     Strict { value, raw }: Strict<NewResolution>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let path = format!("/v1/deviations/{id}/resolution");
-    let print = print("POST", &path, &without(raw, &["secret"]))?;
+    let print = print("POST", &path, &without(raw, &["/secret"]))?;
     house.confirm_secret(&(&caller).into(), &value.secret).await?;
     let site = house.site(caller.site).await?;
     let act = Act::ResolveDeviation(ResolveDeviation {

@@ -197,7 +197,7 @@ pub(crate) async fn found(
     IdempotencyKey(key): IdempotencyKey,
     Strict { value, raw }: Strict<NewBook>,
 ) -> Result<(StatusCode, Json<BookView>), Problem> {
-    let print = print("POST", "/v1/founding", &without(raw, &["token", "admin"]))?;
+    let print = print("POST", "/v1/founding", &without(raw, &["/token", "/admin/password"]))?;
     let founding = Founding {
         token: value.token,
         code: value.code,
@@ -218,7 +218,13 @@ pub(crate) async fn found(
             password: value.admin.password,
         },
     };
-    let (site, admin) = house.found(founding, key, print).await?;
+    let founded = house.found(founding, key, print).await;
+    let (site, admin) = founded.map_err(|error| match error {
+        HouseError::Weak(weakness) => {
+            Problem::at(Kind::Meaningless, "/admin/password", weakness.to_string())
+        }
+        other => other.into(),
+    })?;
     Ok((StatusCode::CREATED, Json(BookView { site: site.0, admin: admin.0 })))
 }
 

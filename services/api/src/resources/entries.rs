@@ -233,7 +233,7 @@ pub(crate) async fn sign(
     IdempotencyKey(key): IdempotencyKey,
     Strict { value, raw }: Strict<NewSignoff>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
-    let print = print("POST", &format!("/v1/entries/{id}/signoffs"), &without(raw, &["secret"]))?;
+    let print = print("POST", &format!("/v1/entries/{id}/signoffs"), &without(raw, &["/secret"]))?;
     house.confirm_secret(&(&caller).into(), &value.secret).await?;
     let site = house.site(caller.site).await?;
     let act = Act::SignOff(SignOff {

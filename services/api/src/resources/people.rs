@@ -78,7 +78,7 @@ pub(crate) async fn enrol(
     IdempotencyKey(key): IdempotencyKey,
     Strict { value, raw }: Strict<EnrolPerson>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
-    let print = print("POST", "/v1/people", &without(raw, &["password"]))?;
+    let print = print("POST", "/v1/people", &without(raw, &["/password"]))?;
     let roles = value.roles.iter().map(|name| role(name)).collect::<Result<Vec<_>, _>>()?;
     let new = NewPerson { login: value.login, name: value.name, password: value.password };
     let (person, receipt) = house.enrol((&caller).into(), key, print, new, roles).await?;

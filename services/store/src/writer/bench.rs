@@ -14,12 +14,11 @@ use domain::stamp::Micros;
 use super::drawn::Drawn;
 use super::sheet::Sheet;
 use super::{Answer, Receipt, Tools, WriteError, clock};
-use crate::commands::{self, Earlier};
 use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Conn, StoreError, directory, log, tiles};
+use crate::{Conn, StoreError, commands, directory, log, tiles};
 
 /// How often one command may ask for more before its decision counts as failed.
 const ROUNDS: usize = 64;
@@ -78,7 +77,9 @@ impl Bench {
         let mut answers = Vec::with_capacity(commands.len());
         for command in commands {
             let answer = match earlier.get(&command.id) {
-                Some(earlier) => self.repeat(conn, command, earlier).await?,
+                Some(earlier) => {
+                    commands::repeat(conn, self.site.number, &command.print, earlier).await?
+                }
                 None => self.decide(conn, tools, &mut sheet, command).await?,
             };
             answers.push(answer);
@@ -99,23 +100,6 @@ impl Bench {
                 published.renew(self.site.number, *subject, loaded);
             }
         }
-    }
-
-    /// The same answer as the first time, from the log.
-    async fn repeat(
-        &self,
-        conn: &mut Conn<'_>,
-        command: &Command,
-        earlier: &Earlier,
-    ) -> Result<Answer, WriteError> {
-        if earlier.print != command.print {
-            return Ok(Err(WriteError::KeyReused));
-        }
-        let stored =
-            log::entries(conn, self.site.number, earlier.first_seq, earlier.entries).await?;
-        let entries =
-            stored.iter().map(|s| s.entry().map(Into::into)).collect::<Result<_, StoreError>>()?;
-        Ok(Ok(Receipt { entries }))
     }
 
     async fn decide(
