@@ -21,7 +21,7 @@ use crate::clock::Clock;
 use crate::error::HouseError;
 use crate::ids::Ids;
 use crate::passwords::Passwords;
-use crate::secrets::{LastSigned, LastSignedError, Secrets, SignedHead};
+use crate::secrets::{LastSigned, LastSignedError, Secrets};
 use crate::tokens::Tokens;
 
 /// Everything the use cases share. Clones are the same house.
@@ -74,16 +74,15 @@ impl House {
         let failed = |error: LastSignedError| HouseError::Failed(error.to_string());
         let memory = &self.inner.last_signed;
         for site in self.sites().await? {
-            let place = log_of(&site.origin);
-            let Some(old) = memory.last(place).map_err(failed)? else { continue };
+            let Some(old) = memory.last(&site.origin).map_err(failed)? else { continue };
             let mut held = self.inner.db.reader().await?;
             let head = store::log::head(&mut held.conn(), site.number).await?;
-            let now = SignedHead { size: head.frontier.size(), root: *head.root.as_bytes() };
+            let now = TreeHead { size: head.frontier.size(), root: head.root };
             let root = match old.size <= now.size {
                 true => store::tiles::root_at(&mut held.conn(), site.number, old.size).await?,
                 false => head.root,
             };
-            memory.check(place, now, |old| old.root == *root.as_bytes()).map_err(failed)?;
+            memory.check(&site.origin, now, |old| old.root == root).map_err(failed)?;
         }
         Ok(())
     }
@@ -312,27 +311,17 @@ fn tools(secrets: &Arc<Secrets>, clock: &Clock, last: &Arc<LastSigned>) -> Tools
         clock: Arc::new(move || time.now()),
         // Without randomness the command fails, and only it: the writer catches the panic.
         draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|error| panic!("{error}"))),
+        signed_last: Arc::new(move |origin: &str| {
+            signed_before.last(origin).map_err(|error| error.to_string())
+        }),
         sign: Arc::new(move |origin: &str, size: u64, root: &Hash| {
-            let old = signed_before.last(log_of(origin)).map_err(|e| e.to_string())?;
-            if old.is_some_and(|old| size < old.size) {
-                return Err(format!("{origin} was longer when it was signed last"));
-            }
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(key.log_key()).map_err(|e| e.to_string())
         }),
         committed: Arc::new(move |origin: &str, head: &TreeHead| {
-            let signed = SignedHead { size: head.size, root: *head.root.as_bytes() };
-            if let Err(error) = remembered.store(log_of(origin), signed) {
+            if let Err(error) = remembered.store(origin, *head) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
         }),
     }
-}
-
-/// The memory of signed heads is kept by the log's name, not by what a database says its site is.
-fn log_of(origin: &str) -> SiteId {
-    let digest = <sha2::Sha256 as sha2::Digest>::digest(origin.as_bytes());
-    let mut bytes = [0; 16];
-    bytes.copy_from_slice(&digest[..16]);
-    SiteId(uuid::Builder::from_custom_bytes(bytes).into_uuid())
 }

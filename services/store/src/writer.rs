@@ -7,6 +7,7 @@
 
 mod bench;
 mod clock;
+mod continuity;
 mod drawn;
 mod group;
 mod sheet;
@@ -31,6 +32,9 @@ use crate::{Db, StoreError};
 /// Commands in one commit at most.
 pub const GROUP: usize = 256;
 
+/// Says which head of a log the key signed last, if it remembers one.
+pub type SignedLast = dyn Fn(&str) -> Result<Option<TreeHead>, String> + Send + Sync;
+
 /// Signs a log's size and root under its origin, and gives the signed note.
 pub type Sign = dyn Fn(&str, u64, &Hash) -> Result<String, String> + Send + Sync;
 
@@ -44,6 +48,9 @@ pub struct Tools {
     pub clock: Arc<dyn Fn() -> Micros + Send + Sync>,
     /// New ids, unguessable ones.
     pub draw: Arc<dyn Fn() -> Uuid + Send + Sync>,
+    /// Remembers what the key signed last: a log that does not continue it is not signed. Asked for every group, so it
+    /// must be quick.
+    pub signed_last: Arc<SignedLast>,
     /// Signs the head of a group before it is committed.
     pub sign: Arc<Sign>,
     /// Told after the commit which head of which origin is now durable, to be remembered beside the key.

@@ -8,7 +8,7 @@ use domain::book::role::Role;
 use domain::ids::{CommandId, PersonId, SiteId};
 use domain::ledger::entry::{Actor, Via};
 use domain::ledger::note::{Checkpoint, VerifierKey};
-use domain::ledger::tree::Hash;
+use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::Micros;
 use ed25519_dalek::SigningKey;
 use tempfile::TempDir;
@@ -66,7 +66,7 @@ pub(super) struct Book {
     pub(super) site: Site,
     pub(super) writers: Writers,
     pub(super) clock: Arc<AtomicI64>,
-    pub(super) committed: Arc<Mutex<Vec<u64>>>,
+    pub(super) committed: Arc<Mutex<Vec<TreeHead>>>,
     /// How many ids to draw until one draw fails with a panic; negative: never.
     pub(super) fuse: Arc<AtomicI64>,
     next: AtomicU64,
@@ -172,11 +172,12 @@ pub(super) fn public_key() -> String {
 pub(super) fn tools(
     series: u64,
     clock: &Arc<AtomicI64>,
-    committed: &Arc<Mutex<Vec<u64>>>,
+    committed: &Arc<Mutex<Vec<TreeHead>>>,
     fuse: &Arc<AtomicI64>,
 ) -> Tools {
     let (clock, committed, fuse) = (Arc::clone(clock), Arc::clone(committed), Arc::clone(fuse));
     let drawn = AtomicU64::new(series << 32);
+    let signed = Arc::clone(&committed);
     Tools {
         clock: Arc::new(move || Micros(clock.load(Ordering::Relaxed))),
         draw: Arc::new(move || {
@@ -184,10 +185,11 @@ pub(super) fn tools(
             let number = drawn.fetch_add(1, Ordering::Relaxed);
             Uuid::from_slice(&Hash::of(&number.to_be_bytes()).0[..16]).unwrap()
         }),
+        signed_last: Arc::new(move |_| Ok(signed.lock().unwrap().last().copied())),
         sign: Arc::new(|origin, size, root| {
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(&key()).map_err(|error| error.to_string())
         }),
-        committed: Arc::new(move |_, head| committed.lock().unwrap().push(head.size)),
+        committed: Arc::new(move |_, head| committed.lock().unwrap().push(*head)),
     }
 }

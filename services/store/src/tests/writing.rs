@@ -7,6 +7,7 @@ use std::time::Duration;
 
 use domain::book::command::{Act, Amend, AmendTo, CorrectClock, DirectoryPerson, Enrol};
 use domain::ids::{BatchId, PersonId};
+use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::{Micros, Stamp};
 use uuid::Uuid;
 
@@ -34,7 +35,7 @@ async fn commands_that_wait_together_are_committed_together() {
         let commits = book.writers.counters().commits() - commits;
         assert!(commits <= 50, "{commits} commits for 200 commands");
         assert_eq!(book.writers.counters().entries(), size + 200);
-        assert_eq!(book.committed.lock().unwrap().last(), Some(&(size + 200)));
+        assert_eq!(book.committed.lock().unwrap().last().unwrap().size, size + 200);
         book.deep_check().await;
     })
     .await;
@@ -328,6 +329,42 @@ async fn a_head_that_the_key_refuses_is_not_committed() {
         assert!(matches!(answer, Err(WriteError::Unsigned(_))));
         assert_eq!(book.size().await, size);
         writers.close().await;
+    })
+    .await;
+}
+
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn a_log_that_does_not_continue_what_was_signed_last_is_not_signed_on() {
+    on_both(async |book| {
+        acts::furnish(book).await;
+        let size = book.size().await;
+        let (older, newest) = {
+            let committed = book.committed.lock().unwrap();
+            (committed[0], *committed.last().unwrap())
+        };
+        let elsewhere = |head: TreeHead| TreeHead { root: Hash([7; 32]), ..head };
+        let longer = TreeHead { size: size + 1, root: newest.root };
+        // Another instance wrote what this one did not, before and after its writer began.
+        let restarted =
+            Writers::new(book.db.clone(), tools(3, &book.clock, &book.committed, &book.fuse));
+        let command = || book.command(reading(batch(), "3.5"));
+        for foreign in [longer, elsewhere(newest), elsewhere(older)] {
+            book.committed.lock().unwrap().push(foreign);
+            for writers in [&book.writers, &restarted] {
+                let refused = writers.submit(book.site.id, command()).await;
+                assert!(
+                    matches!(refused, Err(WriteError::Unsigned(_))),
+                    "{foreign:?}: {refused:?}"
+                );
+            }
+            assert_eq!(book.size().await, size);
+        }
+        book.committed.lock().unwrap().push(older);
+        restarted.submit(book.site.id, command()).await.unwrap();
+        book.writers.submit(book.site.id, command()).await.unwrap();
+        restarted.close().await;
+        assert_eq!(book.size().await, size + 2);
+        book.deep_check().await;
     })
     .await;
 }

@@ -13,12 +13,12 @@ use domain::stamp::Micros;
 
 use super::drawn::Drawn;
 use super::sheet::Sheet;
-use super::{Answer, Receipt, Tools, WriteError, clock};
+use super::{Answer, Receipt, Tools, WriteError, clock, continuity};
 use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Conn, StoreError, commands, directory, log, tiles};
+use crate::{Conn, StoreError, commands, directory, log};
 
 /// How often one command may ask for more before its decision counts as failed.
 const ROUNDS: usize = 64;
@@ -68,7 +68,7 @@ impl Bench {
     ) -> Result<Done, WriteError> {
         self.group += 1;
         let head = log::lock_head(conn, self.site.number).await?;
-        tiles::catch_up(conn, self.site.number, &mut self.edge, &head).await?;
+        continuity::follow(conn, &self.site, &mut self.edge, &head, tools).await?;
         let mut sheet = Sheet::new(head);
         let ids: Vec<_> = commands.iter().map(|command| command.id).collect();
         let earlier = commands::find(conn, self.site.number, &ids).await?;
