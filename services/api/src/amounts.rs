@@ -17,7 +17,7 @@ pub const AHEAD: i64 = 5 * 60 * 1_000_000;
 #[serde(deny_unknown_fields)]
 pub struct Amount {
     /// Digits with at most one point, as text: no exponent, no thousands mark, no sign.
-    #[schema(example = "2.5", pattern = r"^-?[0-9]+(\.[0-9]+)?$", max_length = 40)]
+    #[schema(example = "2.5", pattern = r"^-?[0-9]+(\.[0-9]+)?$", max_length = 17)]
     pub value: String,
     /// UCUM code, capitals as written there.
     #[schema(example = "kg", max_length = 20)]
@@ -86,9 +86,79 @@ pub fn stated_time(text: &str, now: Micros) -> Result<Stamp, TimeError> {
 /// assert_eq!(problem.errors()[0].pointer, "/amount");
 /// ```
 #[derive(Clone, Debug, Default, Eq, PartialEq)]
-pub struct Faults(Vec<FieldError>);
+pub struct Faults {
+    /// What stands before every pointer.
+    within: String,
+    all: Vec<FieldError>,
+}
+
+/// The longest code, in characters (ours). The descriptions of bodies say the same as these.
+const LONGEST_CODE: usize = 40;
+/// The longest name of one line (ours).
+const LONGEST_NAME: usize = 200;
+/// The longest text in words (ours).
+const LONGEST_WORDS: usize = 2_000;
+/// The longest list of names, roles or premises (ours).
+pub(crate) const LONGEST_LIST: usize = 50;
+/// The most substances of one composition (ours).
+pub(crate) const MOST_SUBSTANCES: usize = 100;
 
 impl Faults {
+    /// What is noted from now on stands below this place of the body.
+    pub fn enter(&mut self, pointer: &str) {
+        pointer.clone_into(&mut self.within);
+    }
+
+    /// A code, which stands in addresses and on labels: 1 to 40 characters of one line without a slash, no blank at
+    /// either end. Nothing at all is a matter of who described the body.
+    pub fn code<'a>(&mut self, pointer: &str, text: impl Into<Option<&'a str>>) {
+        let Some(text) = text.into() else { return };
+        if text.contains(char::is_control) || text.contains('/') || text.trim() != text {
+            self.note(pointer, "a code has one line, no slash, and no blank at either end");
+        }
+        self.length(pointer, text, LONGEST_CODE);
+    }
+
+    /// A name: 1 to 200 characters of one line, not blank.
+    pub fn name<'a>(&mut self, pointer: &str, text: impl Into<Option<&'a str>>) {
+        let Some(text) = text.into() else { return };
+        if text.contains(char::is_control) {
+            self.note(pointer, "write it in one line");
+        }
+        self.length(pointer, text, LONGEST_NAME);
+    }
+
+    /// Something in words: 1 to 2,000 characters, not blank.
+    pub fn words<'a>(&mut self, pointer: &str, text: impl Into<Option<&'a str>>) {
+        let Some(text) = text.into() else { return };
+        self.length(pointer, text, LONGEST_WORDS);
+    }
+
+    fn length(&mut self, pointer: &str, text: &str, most: usize) {
+        if text.trim().is_empty() {
+            self.note(pointer, "say something here; blanks are not enough");
+        } else if text.chars().nth(most).is_some() {
+            self.note(pointer, format_args!("it has at most {most} characters"));
+        }
+    }
+
+    /// A list of at most so many items, each of which is then looked at with its pointer.
+    pub fn list<T>(
+        &mut self,
+        pointer: &str,
+        items: &[T],
+        most: usize,
+        mut look: impl FnMut(&mut Self, &str, &T),
+    ) {
+        if items.len() > most {
+            self.note(pointer, format_args!("give at most {most}"));
+            return;
+        }
+        for (index, item) in items.iter().enumerate() {
+            look(self, &format!("{pointer}/{index}"), item);
+        }
+    }
+
     /// The value, or its error noted at a place of the body.
     pub fn at<T, E: Display>(&mut self, pointer: &str, result: Result<T, E>) -> Option<T> {
         match result {
@@ -117,7 +187,8 @@ impl Faults {
 
     /// Notes what is wrong at a place of the body.
     pub fn note(&mut self, pointer: &str, detail: impl Display) {
-        self.0.push(FieldError { pointer: pointer.to_owned(), detail: detail.to_string() });
+        let pointer = format!("{}{pointer}", self.within);
+        self.all.push(FieldError { pointer, detail: detail.to_string() });
     }
 
     /// The whole, if nothing was wrong. Give `None` only where a fault was noted.
@@ -125,20 +196,23 @@ impl Faults {
     /// # Errors
     /// [`Kind::Meaningless`] with every fault.
     pub fn finish<T>(self, whole: Option<T>) -> Result<T, Problem> {
-        match (whole, self.0.first()) {
-            (Some(whole), None) => Ok(whole),
-            (_, Some(first)) => {
-                let detail = match self.0.len() {
-                    1 => first.detail.clone(),
-                    many => format!("{many} places are wrong; the first: {}", first.detail),
-                };
-                Err(Problem::new(Kind::Meaningless, detail).with_errors(self.0))
-            }
-            (None, None) => {
-                tracing::error!("a body was refused without a fault being noted");
-                Err(Problem::new(Kind::Internal, Kind::Internal.advice()))
-            }
+        match whole {
+            Some(whole) if self.all.is_empty() => Ok(whole),
+            _ => Err(self.problem()),
         }
+    }
+
+    /// The problem with every fault.
+    pub(crate) fn problem(self) -> Problem {
+        let Some(first) = self.all.first() else {
+            tracing::error!("a body was refused without a fault being noted");
+            return Problem::new(Kind::Internal, Kind::Internal.advice());
+        };
+        let detail = match self.all.len() {
+            1 => first.detail.clone(),
+            many => format!("{many} places are wrong; the first: {}", first.detail),
+        };
+        Problem::new(Kind::Meaningless, detail).with_errors(self.all)
     }
 }
 
@@ -174,6 +248,52 @@ mod tests {
             ]
         );
         assert!(problem.detail().starts_with("5 places are wrong"), "{}", problem.detail());
+    }
+
+    #[track_caller]
+    fn pointed_at(look: impl FnOnce(&mut Faults)) -> Vec<String> {
+        let mut faults = Faults::default();
+        look(&mut faults);
+        faults.all.into_iter().map(|fault| fault.pointer).collect()
+    }
+
+    #[test]
+    fn a_code_has_one_to_forty_characters_no_slash_and_no_blank_at_its_ends() {
+        let longest = "\u{fc}".repeat(40);
+        for good in ["B", "EXW-25-B1", "two words", &longest] {
+            assert_eq!(pointed_at(|f| f.code("/code", good)), [""; 0], "{good:?}");
+        }
+        let longer = format!("{longest}x");
+        for bad in ["", " ", " B", "B ", "B\n", "\u{a0}B", "a/b", "a\tb", "a\nb", &longer] {
+            assert!(pointed_at(|f| f.code("/code", bad)).contains(&"/code".to_owned()), "{bad:?}");
+        }
+        assert_eq!(pointed_at(|f| f.code("/code", None)), [""; 0]);
+    }
+
+    #[test]
+    fn a_name_has_one_line_and_words_may_have_several() {
+        let (name, words) = ("n".repeat(200), "w".repeat(2_000));
+        assert_eq!(pointed_at(|f| f.name("/name", name.as_str())), [""; 0]);
+        assert_eq!(pointed_at(|f| f.words("/reason", words.as_str())), [""; 0]);
+        assert_eq!(pointed_at(|f| f.words("/reason", "two\nlines")), [""; 0]);
+        let (name, words) = (format!("{name}n"), format!("{words}w"));
+        for bad in ["", "  ", "two\nlines", &name] {
+            assert_eq!(pointed_at(|f| f.name("/name", bad)), ["/name"], "{bad:?}");
+        }
+        for bad in ["", "\n \n", &words] {
+            assert_eq!(pointed_at(|f| f.words("/reason", bad)), ["/reason"], "{bad:?}");
+        }
+    }
+
+    #[test]
+    fn a_list_is_bounded_and_its_items_are_pointed_at_where_they_stand() {
+        let look = |faults: &mut Faults, at: &str, item: &&str| faults.code(at, *item);
+        let pointers = pointed_at(|faults| {
+            faults.enter("/lot");
+            faults.list("/claims", &["a", "", "b", "/"], 4, look);
+        });
+        assert_eq!(pointers, ["/lot/claims/1", "/lot/claims/3"]);
+        assert_eq!(pointed_at(|f| f.list("/claims", &["a", "", "b", "/"], 3, look)), ["/claims"]);
     }
 
     #[test]

@@ -3,7 +3,7 @@
 use domain::book::command::Act;
 use domain::book::subject::Subject;
 use domain::ids::CommandId;
-use domain::ledger::canonical::digest;
+use domain::ledger::canonical::{NotCanonical, digest};
 use house::Asked;
 use serde_json::{Value, json};
 
@@ -13,11 +13,16 @@ use crate::problem::{Kind, Problem};
 /// SHA-256 over what was asked: method, path and body in canonical form, secrets left out.
 ///
 /// # Errors
-/// [`Kind::NotReadable`] if the body holds what the ledger's form forbids.
+/// [`Kind::NotReadable`] with the place, if the body holds what the ledger's form forbids.
 pub(crate) fn print(method: &str, path: &str, body: &Value) -> Result<[u8; 32], Problem> {
     let asked = json!({"method": method, "path": path, "body": body});
-    let digest =
-        digest(&asked).map_err(|error| Problem::new(Kind::NotReadable, error.to_string()))?;
+    let digest = digest(&asked).map_err(|error| match &error {
+        NotCanonical::Refused { pointer, why } => {
+            let within = pointer.strip_prefix("/body").unwrap_or_default();
+            Problem::at(Kind::NotReadable, within, why.to_string())
+        }
+        _ => Problem::at(Kind::NotReadable, "", error.to_string()),
+    })?;
     Ok(*digest.as_bytes())
 }
 
@@ -49,5 +54,27 @@ impl From<&Caller> for house::Caller {
             site: caller.site,
             roles: caller.roles.iter().copied().collect(),
         }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn what_has_no_canonical_form_is_pointed_at_within_the_body() {
+        let body = json!({"lines": [{"note": "a\tb"}]});
+        let problem = print("POST", "/v1/lots", &body).unwrap_err();
+        assert_eq!(problem.kind(), Kind::NotReadable);
+        assert_eq!(problem.errors()[0].pointer, "/lines/0/note");
+        let in_path = print("POST", "/v1/\t", &json!({})).unwrap_err();
+        assert_eq!(in_path.errors()[0].pointer, "");
+    }
+
+    #[test]
+    fn secrets_are_left_out_of_the_print_wherever_they_stand() {
+        let body = json!({"token": "t", "code": "EXW", "admin": {"login": "dov", "password": "p"}});
+        let left = without(body, &["/token", "/admin/password", "/absent/secret"]);
+        assert_eq!(left, json!({"code": "EXW", "admin": {"login": "dov"}}));
     }
 }

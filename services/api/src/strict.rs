@@ -2,7 +2,9 @@
 //!
 //! A member that appears twice, is unknown, or has another type; a number with a fraction or beyond 2⁵³−1; text
 //! after the document: 400, with a JSON pointer to the place. Decimals come as text, so that the number in the book is
-//! the number that was typed (the ledger's canonical form, RFC 8785 without floating point, knows none either).
+//! the number that was typed (the ledger's canonical form, RFC 8785 without floating point, knows none either). Text is
+//! brought into the ledger's form, Unicode normal form C with newlines alone, before anybody sees it; other control
+//! characters are refused, and text of more than 2,000 characters is 422.
 
 use axum::body::Bytes;
 use axum::extract::rejection::{BytesRejection, FailedToBufferBody};
@@ -12,6 +14,7 @@ use serde::de::DeserializeOwned;
 use serde_json::Value;
 use serde_path_to_error::Segment;
 
+use crate::amounts::Faults;
 use crate::problem::{Kind, Problem};
 
 mod walk;
@@ -49,7 +52,7 @@ impl<T: DeserializeOwned, S: Send + Sync> FromRequest<S> for Strict<T> {
 /// Reads a body that has arrived.
 ///
 /// # Errors
-/// [`Kind::NotReadable`] with the place.
+/// [`Kind::NotReadable`] with the place, or [`Kind::Meaningless`] with every text that is too long.
 pub fn parse<T: DeserializeOwned>(bytes: &[u8]) -> Result<Strict<T>, Problem> {
     let not_readable = |detail: &str| Problem::at(Kind::NotReadable, "", detail);
     let text = std::str::from_utf8(bytes).map_err(|_| not_readable("the body is not UTF-8"))?;
@@ -59,13 +62,23 @@ pub fn parse<T: DeserializeOwned>(bytes: &[u8]) -> Result<Strict<T>, Problem> {
     if text.trim_ascii().is_empty() {
         return Err(not_readable("the body is empty"));
     }
-    let raw = walk::read(text).map_err(|fault| {
+    let walk::Read { value: mut raw, too_long } = walk::read(text).map_err(|fault| {
         Problem::at(Kind::NotReadable, shortened(&fault.pointer), shortened(&fault.detail))
     })?;
-    let mut deserializer = serde_json::Deserializer::from_str(text);
-    let value =
-        serde_path_to_error::deserialize(&mut deserializer).map_err(|error| mistyped(&error))?;
-    Ok(Strict { value, raw })
+    let value = serde_path_to_error::deserialize(&raw).map_err(|error| mistyped(&error))?;
+    walk::without_nulls(&mut raw);
+    if too_long.is_empty() { Ok(Strict { value, raw }) } else { Err(too_long_at(&too_long)) }
+}
+
+fn too_long_at(pointers: &[String]) -> Problem {
+    let mut faults = Faults::default();
+    for pointer in pointers {
+        faults.note(
+            &shortened(pointer),
+            format_args!("text has at most {} characters", walk::LONGEST_TEXT),
+        );
+    }
+    faults.problem()
 }
 
 fn require_json(headers: &HeaderMap) -> Result<(), Problem> {

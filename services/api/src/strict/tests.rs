@@ -107,9 +107,19 @@ fn numbers_that_not_everybody_reads_alike_are_refused() {
 
 #[test]
 fn text_that_is_not_clean_unicode_is_refused() {
-    for escape in
-        [r"\ud800", r"\udc00", r"\ud800\ud800", r"\ud83c", r"\u0000", r"\x41", "\t", "\u{0}"]
-    {
+    for escape in [
+        r"\ud800",
+        r"\udc00",
+        r"\ud800\ud800",
+        r"\ud83c",
+        r"\u0000",
+        r"\x41",
+        r"\t",
+        r"\u007f",
+        r"\u0085",
+        "\t",
+        "\u{0}",
+    ] {
         let body = GOOD.replace("yeast food", escape);
         assert_eq!(fault(body).0, "/material", "{escape}");
     }
@@ -117,6 +127,32 @@ fn text_that_is_not_clean_unicode_is_refused() {
     latin.retain(|byte| *byte != 0xc3);
     assert_eq!(fault(latin).1, "the body is not UTF-8");
     assert!(parse::<Dose>(GOOD.replace("yeast", r"\ud83c\udf47").as_bytes()).is_ok());
+}
+
+#[test]
+fn text_is_brought_into_the_ledgers_form_before_anybody_sees_it() {
+    let body = GOOD.replace("yeast food", r"Jose\u0301\r\nMu\u0308ller\rGmbH\n");
+    let read = parse::<Dose>(body.as_bytes()).unwrap();
+    assert_eq!(read.value.material, "Jos\u{e9}\nM\u{fc}ller\nGmbH\n");
+    assert_eq!(read.raw["material"], read.value.material);
+    let composed = GOOD.replace("yeast food", r"Jos\u00e9\nM\u00fcller\nGmbH\n");
+    assert_eq!(parse::<Dose>(composed.as_bytes()).unwrap().raw, read.raw);
+    let twice = r#"{"caf\u00e9":1,"cafe\u0301":2}"#;
+    let twice = parse::<Value>(twice.as_bytes()).unwrap_err();
+    assert!(twice.detail().contains("twice"), "{}", twice.detail());
+}
+
+#[test]
+fn every_text_over_two_thousand_characters_is_pointed_at() {
+    let longest = "\u{fc}".repeat(2_000);
+    assert!(parse::<Dose>(GOOD.replace("yeast food", &longest).as_bytes()).is_ok());
+    let longer = format!("{longest}!");
+    let body = GOOD.replace("yeast food", &longer).replace("2.5", &longer);
+    let problem = parse::<Dose>(body.as_bytes()).unwrap_err();
+    assert_eq!(problem.kind(), Kind::Meaningless);
+    let pointers: Vec<_> = problem.errors().iter().map(|error| error.pointer.as_str()).collect();
+    assert_eq!(pointers, ["/material", "/lines/0/amount"]);
+    assert!(problem.errors()[0].detail.contains("2000 characters"), "{problem:?}");
 }
 
 #[test]

@@ -4,11 +4,14 @@ use std::fmt;
 
 use serde::de::{DeserializeSeed, Deserializer, Error, MapAccess, SeqAccess, Visitor};
 use serde_json::{Map, Value};
+use unicode_normalization::UnicodeNormalization as _;
 
 /// How deep arrays and objects may stand in each other (ours; the deepest body needs about six).
 const DEEPEST: usize = 64;
 /// How many values one body may hold (ours; an act over 400 casks needs some thousands).
 const MOST_VALUES: usize = 20_000;
+/// How long one text may be, in characters (ours; the longest remark of the book has as many).
+pub(super) const LONGEST_TEXT: usize = 2_000;
 /// The largest integer that every JSON reader keeps exact (RFC 8259 section 6).
 const LARGEST_INTEGER: u64 = (1 << 53) - 1;
 
@@ -19,17 +22,42 @@ pub(super) struct Fault {
     pub(super) detail: String,
 }
 
-/// Reads a whole text into plain JSON without `null` members.
-pub(super) fn read(text: &str) -> Result<Value, Fault> {
+/// A whole body.
+#[derive(Debug)]
+pub(super) struct Read {
+    /// As plain JSON, its text normalised.
+    pub(super) value: Value,
+    /// Pointers to texts longer than [`LONGEST_TEXT`].
+    pub(super) too_long: Vec<String>,
+}
+
+/// Reads a whole text.
+pub(super) fn read(text: &str) -> Result<Read, Fault> {
     let mut place = Vec::new();
+    let mut too_long = Vec::new();
     let mut left = MOST_VALUES;
     let mut deserializer = serde_json::Deserializer::from_str(text);
-    let walk = Walk { place: &mut place, left: &mut left };
+    let walk = Walk { place: &mut place, left: &mut left, too_long: &mut too_long };
     let value = walk.deserialize(&mut deserializer).and_then(|value| {
         deserializer.end()?;
         Ok(value)
     });
-    value.map_err(|error| Fault { pointer: pointer_of(&place), detail: described(&error) })
+    match value {
+        Ok(value) => Ok(Read { value, too_long }),
+        Err(error) => Err(Fault { pointer: pointer_of(&place), detail: described(&error) }),
+    }
+}
+
+/// Leaves members out that are `null`.
+pub(super) fn without_nulls(value: &mut Value) {
+    match value {
+        Value::Array(items) => items.iter_mut().for_each(without_nulls),
+        Value::Object(members) => {
+            members.retain(|_, value| !value.is_null());
+            members.values_mut().for_each(without_nulls);
+        }
+        _ => {}
+    }
 }
 
 /// Adds one step to a JSON pointer (RFC 6901 section 3).
@@ -61,11 +89,12 @@ fn pointer_of(place: &[String]) -> String {
 struct Walk<'a> {
     place: &'a mut Vec<String>,
     left: &'a mut usize,
+    too_long: &'a mut Vec<String>,
 }
 
 impl Walk<'_> {
     fn child(&mut self) -> Walk<'_> {
-        Walk { place: self.place, left: self.left }
+        Walk { place: self.place, left: self.left, too_long: self.too_long }
     }
 
     fn count<E: Error>(&mut self) -> Result<(), E> {
@@ -123,8 +152,11 @@ impl<'de> Visitor<'de> for Walk<'_> {
     }
 
     fn visit_str<E: Error>(self, value: &str) -> Result<Value, E> {
-        without_nul(value)?;
-        Ok(value.into())
+        let text = normalised(value)?;
+        if text.chars().nth(LONGEST_TEXT).is_some() {
+            self.too_long.push(pointer_of(self.place));
+        }
+        Ok(text.into())
     }
 
     fn visit_seq<A: SeqAccess<'de>>(mut self, mut items: A) -> Result<Value, A::Error> {
@@ -144,8 +176,8 @@ impl<'de> Visitor<'de> for Walk<'_> {
         self.go_deeper()?;
         let mut object = Map::new();
         while let Some(name) = members.next_key::<String>()? {
-            without_nul(&name)?;
             self.place.push(name.clone());
+            let name = normalised(&name)?;
             if object.contains_key(&name) {
                 return Err(A::Error::custom("this member appears twice"));
             }
@@ -153,7 +185,6 @@ impl<'de> Visitor<'de> for Walk<'_> {
             object.insert(name, value);
             self.place.pop();
         }
-        object.retain(|_, value| !value.is_null());
         Ok(object.into())
     }
 }
@@ -166,10 +197,14 @@ fn exact<E: Error>(magnitude: u64) -> Result<(), E> {
     }
 }
 
-fn without_nul<E: Error>(text: &str) -> Result<(), E> {
-    if text.contains('\0') {
-        Err(E::custom("text must not hold the character U+0000"))
-    } else {
-        Ok(())
+/// Text in the ledger's form: Unicode normal form C, lines ended by a newline alone, no other control character.
+fn normalised<E: Error>(text: &str) -> Result<String, E> {
+    let text: String = text.replace("\r\n", "\n").replace('\r', "\n").nfc().collect();
+    match text.chars().find(|c| c.is_control() && *c != '\n') {
+        None => Ok(text),
+        Some(c) => Err(E::custom(format_args!(
+            "text must not hold the control character U+{:04X}",
+            u32::from(c)
+        ))),
     }
 }
