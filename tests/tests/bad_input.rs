@@ -131,6 +131,103 @@ on_both_engines! {
         assert_eq!(cellar.deep_check(), before);
     }
 
+    fn text_is_normalised_before_it_is_recorded_compared_or_refused(engine) {
+        let cellar = Cellar::simulated(engine);
+        let mut person = json!({"login": "jose\u{301}", "name": "Jose\u{301} Example",
+            "password": "a ledger reads itself aloud", "roles": ["auditor"]});
+        let key = random_id();
+        let first = cellar.dov.post_as(&key, "/v1/people", &person).expect(201);
+        person["login"] = json!("jos\u{e9}");
+        person["name"] = json!("Jos\u{e9} Example");
+        let again = cellar.dov.post_as(&key, "/v1/people", &person).expect(201);
+        assert_eq!(again.json(), first.json());
+        for login in ["jose\u{301}", "jos\u{e9}"] {
+            let _ = cellar.nobody().signed_in("EXW", login, "a ledger reads itself aloud");
+        }
+        let batch = cellar.open("B1", "3000", "L");
+        let mut reading = cellar.gravity_body("1.0940");
+        reading["note"] = json!("foam\r\nand\rmore foam");
+        let recorded = cellar.ana.post(&readings(&batch), &reading).expect(201);
+        assert_eq!(recorded.text("/entries/0/body/note"), "foam\nand\nmore foam");
+
+        let before = cellar.size();
+        for note in ["a\tb", "a\u{7f}b", "a\u{85}b", "\u{1b}[2J"] {
+            reading["note"] = json!(note);
+            let refused = cellar.ana.post(&readings(&batch), &reading);
+            points_at(&refused.expect_problem(400, "not-readable"), "/note");
+        }
+        reading["note"] = json!("\u{fc}".repeat(2_001));
+        let refused = cellar.ana.post(&readings(&batch), &reading);
+        points_at(&refused.expect_problem(422, "meaningless"), "/note");
+        assert_eq!(cellar.deep_check(), before);
+    }
+
+    fn codes_names_and_words_have_their_lengths_and_lists_theirs(engine) {
+        let mut cellar = Cellar::simulated(engine);
+        let lot = cellar.receive("DP-0412", "DAP", "25", "kg");
+        let batch = cellar.open("B1", "3000", "L");
+        let done = cellar.add_unasked(&batch, &[(&lot, "12", "kg")]).expect(201);
+        let (entry, deviation) = (done.text("/id"), done.text("/deviation"));
+        let set = cellar.caro.get("/v1/rule-sets").expect(200).items()[0].clone();
+        let before = cellar.size();
+        let secret = cellar::PEOPLE[1].2;
+        let material = json!({"code": "M", "name": "m", "category": "other", "dimension": "mass"});
+        let reading = cellar.gravity_body("1.0940");
+        let opening = cellar.batch("B2", "1000", "L");
+        let receipt = cellar.lot("NEW", "DAP", "1", "kg");
+        let amended = json!({"reason": "typed wrongly", "lot": receipt});
+        let party = json!({"code": "P", "name": "p"});
+        let many = |most: usize| Value::from(vec!["x"; most + 1]);
+        let (code, name) = (json!("c".repeat(41)), json!("n".repeat(201)));
+        let part = json!({"substance": "x", "fraction": {"value": "0.1", "unit": "mg/kg"}});
+        for (who, path, body, pointer, bad) in [
+            (&cellar.ana, "/v1/lots", &receipt, "/code", code.clone()),
+            (&cellar.ana, "/v1/lots", &receipt, "/code", json!("a/b")),
+            (&cellar.ana, "/v1/lots", &receipt, "/code", json!(" ")),
+            (&cellar.ana, "/v1/lots", &receipt, "/supplier_lot", name.clone()),
+            (&cellar.ana, "/v1/lots", &receipt, "/document", json!("")),
+            (&cellar.ana, "/v1/lots", &receipt, "/composition", Value::from(vec![part; 101])),
+            (&cellar.ben, "/v1/materials", &material, "/name", json!("two\nlines")),
+            (&cellar.ben, "/v1/materials", &material, "/listed_as", many(50)),
+            (&cellar.ben, "/v1/materials", &material, "/listed_as/0", json!([""])),
+            (&cellar.ben, "/v1/parties", &party, "/licence", name.clone()),
+            (&cellar.ben, "/v1/parties", &party, "/address", json!(" \n ")),
+            (&cellar.ben, "/v1/batches", &opening, "/code", json!("B2 ")),
+            (&cellar.ben, "/v1/batches", &opening, "/claims", many(50)),
+            (&cellar.ben, "/v1/batches", &opening, "/destinations/0", json!([code.clone()])),
+            (&cellar.ben, "/v1/batches", &opening, "/volume_basis", json!("")),
+            (&cellar.ana, &*readings(&batch), &reading, "/laboratory", name.clone()),
+            (&cellar.ana, &*readings(&batch), &reading, "/note", json!("")),
+            (&cellar.caro, "/v1/deviations", &json!({"code": "D", "title": "t",
+                "opened_at": cellar.now()}), "/title", name.clone()),
+            (&cellar.caro, &*format!("/v1/deviations/{deviation}/resolution"), &json!({"cause": "c",
+                "action": "a", "conclusion": "c", "secret": secret}), "/conclusion", json!("")),
+            (&cellar.ana, &*format!("/v1/batches/{batch}/additions"),
+                &cellar.already_done(&[(&lot, "1", "g")]), "/reason", json!(" ")),
+            (&cellar.ana, &*format!("/v1/batches/{batch}/proposals"),
+                &cellar.proposal(&[(&lot, "1", "g")]), "/purpose", json!("")),
+            (&cellar.ana, &*format!("/v1/entries/{entry}/amendments"), &amended, "/reason", json!("")),
+            (&cellar.ana, &*format!("/v1/entries/{entry}/amendments"), &amended, "/lot/code", code),
+            (&cellar.caro, &*format!("/v1/batches/{batch}/record"), &json!({"to": "x"}), "/to", name),
+            (&cellar.caro, &*format!("/v1/rule-sets/{}/adoptions", set["id"].as_str().unwrap()),
+                &json!({"standing": "market", "market": "EU", "digest": set["digest"],
+                "from": cellar.now()}), "/market", json!("E/U")),
+            (&cellar.dov, "/v1/people", &json!({"login": "edi", "name": "Edi",
+                "password": "a ledger reads itself aloud", "roles": []}), "/roles", many(50)),
+        ] {
+            let mut body = body.clone();
+            let (member, bad) = match pointer.strip_suffix("/0") {
+                Some(list) => (list, bad),
+                None => (pointer, bad),
+            };
+            let (within, name) = member.rsplit_once('/').unwrap();
+            body.pointer_mut(within).unwrap()[name] = bad;
+            let answer = who.post(path, &body);
+            points_at(&answer.expect_problem(422, "meaningless"), pointer);
+        }
+        assert_eq!(cellar.deep_check(), before);
+    }
+
     fn a_missing_or_malformed_idempotency_key_is_400(engine) {
         let cellar = Cellar::simulated(engine);
         let batch = cellar.open("B1", "3000", "L");

@@ -33,7 +33,7 @@ pub(crate) struct NewAddition {
     #[serde(default)]
     already_done: bool,
     /// Why it was done before anybody asked.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     reason: Option<String>,
     /// When it was done.
     #[schema(format = DateTime)]
@@ -64,8 +64,11 @@ impl NewAddition {
             .and_then(|water| faults.amount("/carrier_water", water, Dimension::Volume));
         let preparation = faults.at("/preparation", preparation(&self.preparation));
         let already_done = match (self.already_done, self.reason) {
-            (true, Some(reason)) if !reason.trim().is_empty() => Some(reason),
-            (true, _) => {
+            (true, Some(reason)) => {
+                faults.words("/reason", reason.as_str());
+                Some(reason)
+            }
+            (true, None) => {
                 faults.note("/reason", "say why it was done before anybody asked");
                 None
             }

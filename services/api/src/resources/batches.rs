@@ -14,7 +14,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::{IntoParams, ToSchema};
 use uuid::Uuid;
 
-use crate::amounts::{Amount, Faults, stated_time};
+use crate::amounts::{Amount, Faults, LONGEST_LIST, stated_time};
 use crate::asking::{asked, print};
 use crate::caller::Caller;
 use crate::etag::{etag, unchanged};
@@ -59,6 +59,7 @@ pub(crate) struct NewExpectedFinal {
     #[schema(example = "sg_20_20")]
     scale: String,
     /// From what it follows: composition, laboratory, earlier batches.
+    #[schema(min_length = 1, max_length = 2000)]
     basis: String,
 }
 
@@ -70,6 +71,7 @@ pub(crate) struct NewFermentableSugar {
     #[schema(example = "119.3")]
     g_per_l: String,
     /// From what it follows.
+    #[schema(min_length = 1, max_length = 2000)]
     basis: String,
 }
 
@@ -78,19 +80,23 @@ pub(crate) struct NewFermentableSugar {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewBatch {
     /// Our code, unique in the site.
-    #[schema(example = "EXW-25-B1", max_length = 40)]
+    #[schema(example = "EXW-25-B1", min_length = 1, max_length = 40)]
     code: String,
     /// Name as printed.
+    #[schema(min_length = 1, max_length = 200)]
     name: Option<String>,
     /// `grape_wine`, `fruit_wine`, `mead`, `cider`, `perry`, `beer`, `wash`, `fruit_mash`, `marc`, `wine_spirit_base`.
     product_class: String,
     /// The premises it is made on, by code.
+    #[schema(min_length = 1, max_length = 40)]
     premises: String,
-    /// Markets it is meant for.
+    /// Markets it is meant for, by code.
     #[serde(default)]
+    #[schema(max_items = 50)]
     destinations: Vec<String>,
-    /// Claims it carries.
+    /// Claims it carries, by code.
     #[serde(default)]
+    #[schema(max_items = 50)]
     claims: Vec<String>,
     /// The vessel's id.
     vessel: Uuid,
@@ -100,7 +106,7 @@ pub(crate) struct NewBatch {
     /// What was filled.
     volume: Amount,
     /// How the volume was measured.
-    #[schema(example = "dip rod")]
+    #[schema(example = "dip rod", min_length = 1, max_length = 200)]
     volume_basis: String,
     /// The liquid in it, on which every dose is judged; the whole volume unless told.
     liquid: Option<Amount>,
@@ -119,8 +125,23 @@ pub(crate) struct NewBatch {
 }
 
 impl NewBatch {
+    fn texts(&self, faults: &mut Faults) {
+        let codes = |faults: &mut Faults, at: &str, code: &String| faults.code(at, code.as_str());
+        faults.code("/code", self.code.as_str());
+        faults.name("/name", self.name.as_deref());
+        faults.code("/premises", self.premises.as_str());
+        faults.list("/destinations", &self.destinations, LONGEST_LIST, codes);
+        faults.list("/claims", &self.claims, LONGEST_LIST, codes);
+        faults.name("/volume_basis", self.volume_basis.as_str());
+        let basis = self.expected_final.as_ref().map(|end| end.basis.as_str());
+        faults.words("/expected_final/basis", basis);
+        let basis = self.fermentable_sugar.as_ref().map(|sugar| sugar.basis.as_str());
+        faults.words("/fermentable_sugar/basis", basis);
+    }
+
     fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
         let mut faults = Faults::default();
+        self.texts(&mut faults);
         let volume = faults.amount("/volume", &self.volume, Dimension::Volume);
         let liquid = match &self.liquid {
             Some(liquid) => faults.amount("/liquid", liquid, Dimension::Volume),

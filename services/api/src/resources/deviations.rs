@@ -120,10 +120,10 @@ pub(crate) async fn show(
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewDeviation {
     /// Our code, unique in the site.
-    #[schema(max_length = 40)]
+    #[schema(min_length = 1, max_length = 40)]
     code: String,
     /// What happened.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     title: String,
     /// The batch it concerns.
     batch: Option<Uuid>,
@@ -144,6 +144,8 @@ pub(crate) async fn open(
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let print = print("POST", "/v1/deviations", &raw)?;
     let mut faults = Faults::default();
+    faults.code("/code", value.code.as_str());
+    faults.name("/title", value.title.as_str());
     let opened_at = faults.at("/opened_at", stated_time(&value.opened_at, house.now()));
     let act = Act::OpenDeviation(OpenDeviation {
         deviation: house.draw()?,
@@ -161,13 +163,13 @@ pub(crate) async fn open(
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewResolution {
     /// Why it happened.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     cause: String,
     /// What was done.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     action: String,
     /// What it means for the batch.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     conclusion: String,
     /// The signer's password, asked again.
     secret: String,
@@ -186,6 +188,11 @@ pub(crate) async fn resolve(
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let path = format!("/v1/deviations/{id}/resolution");
     let print = print("POST", &path, &without(raw, &["/secret"]))?;
+    let mut faults = Faults::default();
+    faults.words("/cause", value.cause.as_str());
+    faults.words("/action", value.action.as_str());
+    faults.words("/conclusion", value.conclusion.as_str());
+    faults.finish(Some(()))?;
     house.confirm_secret(&(&caller).into(), &value.secret).await?;
     let site = house.site(caller.site).await?;
     let act = Act::ResolveDeviation(ResolveDeviation {

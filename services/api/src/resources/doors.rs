@@ -11,6 +11,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 use uuid::Uuid;
 
+use crate::amounts::{Faults, LONGEST_LIST};
 use crate::asking::{print, without};
 use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
@@ -129,20 +130,22 @@ pub(crate) struct NewBook {
     /// The one-time token from the console.
     token: String,
     /// Short code of the site.
-    #[schema(example = "EXW", max_length = 40)]
+    #[schema(example = "EXW", min_length = 1, max_length = 40)]
     code: String,
     /// Its name as printed.
-    #[schema(example = "Example Works", max_length = 200)]
+    #[schema(example = "Example Works", min_length = 1, max_length = 200)]
     name: String,
     /// Name of its log and key, fixed for ever: best a name under a domain of your own.
-    #[schema(example = "works.example/book", max_length = 200)]
+    #[schema(example = "works.example/book", min_length = 1, max_length = 200)]
     origin: String,
     /// IANA time zone.
     #[schema(example = "America/Los_Angeles")]
     time_zone: String,
     /// Licence or permit number.
+    #[schema(min_length = 1, max_length = 200)]
     licence: Option<String>,
     /// What may be done where.
+    #[schema(min_items = 1, max_items = 50)]
     premises: Vec<NewPremises>,
     /// Only a simulation may run on a driven clock; everything that leaves it says so.
     simulation: bool,
@@ -158,12 +161,13 @@ pub(crate) struct NewBook {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewPremises {
     /// Short code.
-    #[schema(example = "BW")]
+    #[schema(example = "BW", min_length = 1, max_length = 40)]
     code: String,
     /// What it is to the law: `bonded_wine_premises`, `distilled_spirits_plant`, `brewery` …
-    #[schema(example = "bonded_wine_premises")]
+    #[schema(example = "bonded_wine_premises", min_length = 1, max_length = 200)]
     kind: String,
     /// Name as printed.
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
 }
 
@@ -172,11 +176,49 @@ pub(crate) struct NewPremises {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewAdmin {
     /// What they sign in with.
+    #[schema(min_length = 1, max_length = 200)]
     login: String,
     /// Printed name.
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
     /// At least 15 characters.
     password: String,
+}
+
+impl NewBook {
+    fn read(self) -> Result<Founding, Problem> {
+        let mut faults = Faults::default();
+        faults.code("/code", self.code.as_str());
+        faults.name("/name", self.name.as_str());
+        faults.name("/origin", self.origin.as_str());
+        faults.name("/licence", self.licence.as_deref());
+        faults.list("/premises", &self.premises, LONGEST_LIST, |faults, at, premises| {
+            faults.code(&format!("{at}/code"), premises.code.as_str());
+            faults.name(&format!("{at}/kind"), premises.kind.as_str());
+            faults.name(&format!("{at}/name"), premises.name.as_str());
+        });
+        faults.name("/admin/login", self.admin.login.as_str());
+        faults.name("/admin/name", self.admin.name.as_str());
+        let premises = self.premises.into_iter();
+        faults.finish(Some(Founding {
+            token: self.token,
+            code: self.code,
+            name: self.name,
+            origin: self.origin,
+            time_zone: self.time_zone,
+            licence: self.licence,
+            premises: premises
+                .map(|p| Premises { code: p.code, kind: p.kind, name: p.name })
+                .collect(),
+            simulation: self.simulation,
+            single_handed: self.single_handed,
+            admin: NewPerson {
+                login: self.admin.login,
+                name: self.admin.name,
+                password: self.admin.password,
+            },
+        }))
+    }
 }
 
 /// A book just founded.
@@ -198,26 +240,7 @@ pub(crate) async fn found(
     Strict { value, raw }: Strict<NewBook>,
 ) -> Result<(StatusCode, Json<BookView>), Problem> {
     let print = print("POST", "/v1/founding", &without(raw, &["/token", "/admin/password"]))?;
-    let founding = Founding {
-        token: value.token,
-        code: value.code,
-        name: value.name,
-        origin: value.origin,
-        time_zone: value.time_zone,
-        licence: value.licence,
-        premises: value
-            .premises
-            .into_iter()
-            .map(|p| Premises { code: p.code, kind: p.kind, name: p.name })
-            .collect(),
-        simulation: value.simulation,
-        single_handed: value.single_handed,
-        admin: NewPerson {
-            login: value.admin.login,
-            name: value.admin.name,
-            password: value.admin.password,
-        },
-    };
+    let founding = value.read()?;
     let founded = house.found(founding, key, print).await;
     let (site, admin) = founded.map_err(|error| match error {
         HouseError::Weak(weakness) => {

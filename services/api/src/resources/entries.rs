@@ -110,7 +110,7 @@ pub(crate) async fn of_kind(
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewAmendment {
     /// Why.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     reason: String,
     /// It did not happen.
     #[serde(default)]
@@ -138,6 +138,7 @@ pub(crate) struct AmendedValue {
 impl NewAmendment {
     fn read(self, house: &House, target: &InForce) -> Result<AmendTo, Problem> {
         let mut faults = Faults::default();
+        faults.words("/reason", self.reason.as_str());
         let given = [
             self.void,
             self.value.is_some(),
@@ -154,7 +155,9 @@ impl NewAmendment {
                 Body::LotReceived(body) => body.lot,
                 _ => LotId(Uuid::nil()),
             };
-            return Ok(AmendTo::Receipt(Box::new(lot.read(house, id)?)));
+            faults.enter("/lot");
+            let receipt = lot.read(&mut faults, id, house.now());
+            return faults.finish(receipt.map(|receipt| AmendTo::Receipt(Box::new(receipt))));
         }
         let now = house.now();
         let batch = batch_of(target);
@@ -163,12 +166,16 @@ impl NewAmendment {
                 let read = value.value.read(&mut faults, "/value/value");
                 Some(AmendTo::Value(value.index, Box::new(read)))
             }
-            (_, Some(reading), _) => reading
-                .read(&mut faults, batch, now)
-                .map(|reading| AmendTo::Reading(Box::new(reading))),
-            (_, _, Some(addition)) => addition
-                .read(&mut faults, batch, now)
-                .map(|addition| AmendTo::Addition(Box::new(addition))),
+            (_, Some(reading), _) => {
+                faults.enter("/reading");
+                let reading = reading.read(&mut faults, batch, now);
+                reading.map(|reading| AmendTo::Reading(Box::new(reading)))
+            }
+            (_, _, Some(addition)) => {
+                faults.enter("/addition");
+                let addition = addition.read(&mut faults, batch, now);
+                addition.map(|addition| AmendTo::Addition(Box::new(addition)))
+            }
             _ => Some(AmendTo::Void),
         };
         faults.finish(to)
@@ -216,7 +223,7 @@ pub(crate) struct NewSignoff {
     /// The `shown` of the proposal as it was read: the signature binds exactly that.
     shown: String,
     /// Why.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     reason: String,
     /// The signer's password, asked again.
     secret: String,
@@ -234,6 +241,9 @@ pub(crate) async fn sign(
     Strict { value, raw }: Strict<NewSignoff>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let print = print("POST", &format!("/v1/entries/{id}/signoffs"), &without(raw, &["/secret"]))?;
+    let mut faults = Faults::default();
+    faults.words("/reason", value.reason.as_str());
+    faults.finish(Some(()))?;
     house.confirm_secret(&(&caller).into(), &value.secret).await?;
     let site = house.site(caller.site).await?;
     let act = Act::SignOff(SignOff {

@@ -9,6 +9,7 @@ use domain::book::body::LotStatus;
 use domain::book::command::{Act, Receive};
 use domain::book::state::State as Folded;
 use domain::ids::LotId;
+use domain::stamp::Micros;
 use domain::units::{Dimension, Quantity};
 use house::House;
 use serde::{Deserialize, Serialize};
@@ -30,13 +31,14 @@ use crate::views::{Listed, Recorded};
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewLot {
     /// Our code, unique in the site.
-    #[schema(example = "DP-0412", max_length = 40)]
+    #[schema(example = "DP-0412", min_length = 1, max_length = 40)]
     code: String,
     /// The material's id.
     material: Uuid,
     /// The supplier's id; leave out what you made yourself.
     supplier: Option<Uuid>,
     /// The supplier's own lot code.
+    #[schema(min_length = 1, max_length = 200)]
     supplier_lot: Option<String>,
     /// How much came in.
     amount: Amount,
@@ -47,9 +49,11 @@ pub(crate) struct NewLot {
     #[schema(format = DateTime)]
     expires_at: Option<String>,
     /// Delivery note or invoice.
+    #[schema(min_length = 1, max_length = 200)]
     document: Option<String>,
     /// This lot's own analysis, in place of the material's.
     #[serde(default)]
+    #[schema(max_items = 100)]
     composition: Vec<NewComponent>,
     /// `released` (may be used at once) or `held`.
     #[schema(example = "released")]
@@ -58,19 +62,21 @@ pub(crate) struct NewLot {
 
 impl NewLot {
     /// What it asks of the book.
-    pub(crate) fn read(self, house: &House, lot: LotId) -> Result<Receive, Problem> {
-        let mut faults = Faults::default();
+    pub(crate) fn read(self, faults: &mut Faults, lot: LotId, now: Micros) -> Option<Receive> {
+        faults.code("/code", self.code.as_str());
+        faults.name("/supplier_lot", self.supplier_lot.as_deref());
+        faults.name("/document", self.document.as_deref());
         let amount =
             faults.at("/amount", Quantity::parse_any(&self.amount.value, &self.amount.unit));
-        let received_at = faults.at("/received_at", stated_time(&self.received_at, house.now()));
+        let received_at = faults.at("/received_at", stated_time(&self.received_at, now));
         let expires_at = self
             .expires_at
             .as_deref()
             .and_then(|text| faults.at("/expires_at", domain::stamp::Stamp::parse(text)));
-        let composition = composition(&mut faults, &self.composition);
+        let composition = composition(faults, &self.composition);
         let status = faults.at("/status", status(&self.status));
         let whole = amount.zip(received_at).zip(status);
-        faults.finish(whole.map(|((amount, received_at), status)| Receive {
+        whole.map(|((amount, received_at), status)| Receive {
             lot,
             code: self.code,
             material: self.material.into(),
@@ -82,7 +88,7 @@ impl NewLot {
             document: self.document,
             composition,
             status,
-        }))
+        })
     }
 }
 
@@ -211,8 +217,9 @@ pub(crate) async fn receive(
     Strict { value, raw }: Strict<NewLot>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let print = print("POST", "/v1/lots", &raw)?;
-    let receive = value.read(&house, house.draw()?)?;
-    let act = Act::Receive(Box::new(receive));
+    let mut faults = Faults::default();
+    let receive = value.read(&mut faults, house.draw()?, house.now());
+    let act = Act::Receive(Box::new(faults.finish(receive)?));
     let receipt = house.submit(asked(&caller, key, print, act)).await?;
     Ok((StatusCode::CREATED, Json(Recorded::of(&receipt, "lot", Uuid::nil()))))
 }
@@ -224,7 +231,7 @@ pub(crate) struct NewStatus {
     /// released, held or rejected.
     status: String,
     /// Why.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     reason: String,
 }
 
@@ -241,6 +248,7 @@ pub(crate) async fn change_status(
     Strict { value, raw }: Strict<NewStatus>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let mut faults = Faults::default();
+    faults.words("/reason", value.reason.as_str());
     let status = faults.at("/status", status(&value.status));
     let status = faults.finish(status)?;
     let subject = LotId(id).into();

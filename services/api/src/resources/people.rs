@@ -12,6 +12,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 use uuid::Uuid;
 
+use crate::amounts::{Faults, LONGEST_LIST};
 use crate::asking::{asked, print, without};
 use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
@@ -57,14 +58,15 @@ pub(crate) async fn list(
 #[serde(deny_unknown_fields)]
 pub(crate) struct EnrolPerson {
     /// What they will sign in with, unique in the site.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     login: String,
     /// Printed name, as it will stand under signatures.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
     /// First password, at least 15 characters.
     password: String,
     /// Roles from the start: cellar, lead, quality, admin, auditor.
+    #[schema(max_items = 50)]
     roles: Vec<String>,
 }
 
@@ -79,6 +81,11 @@ pub(crate) async fn enrol(
     Strict { value, raw }: Strict<EnrolPerson>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let print = print("POST", "/v1/people", &without(raw, &["/password"]))?;
+    let mut faults = Faults::default();
+    faults.name("/login", value.login.as_str());
+    faults.name("/name", value.name.as_str());
+    faults.list("/roles", &value.roles, LONGEST_LIST, |_, _, _| {});
+    faults.finish(Some(()))?;
     let roles = value.roles.iter().map(|name| role(name)).collect::<Result<Vec<_>, _>>()?;
     let new = NewPerson { login: value.login, name: value.name, password: value.password };
     let (person, receipt) = house.enrol((&caller).into(), key, print, new, roles).await?;

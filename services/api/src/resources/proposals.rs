@@ -40,7 +40,7 @@ pub(crate) struct NewProposal {
     #[schema(example = "slurry")]
     preparation: String,
     /// What for.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     purpose: Option<String>,
 }
 
@@ -58,6 +58,7 @@ pub(crate) fn preparation(word: &str) -> Result<Preparation, &'static str> {
 impl NewProposal {
     fn read(self, house: &House, batch: BatchId, asked_at: Stamp) -> Result<Propose, Problem> {
         let mut faults = Faults::default();
+        faults.words("/purpose", self.purpose.as_deref());
         let planned_at = faults.at("/planned_at", Stamp::parse(&self.planned_at));
         let draws = draws(&mut faults, "/lines", &self.lines);
         let carrier_water = self

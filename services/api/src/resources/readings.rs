@@ -35,13 +35,16 @@ pub(crate) struct NewReading {
     #[schema(format = DateTime)]
     reported_at: Option<String>,
     /// Number of the sample.
+    #[schema(min_length = 1, max_length = 200)]
     sample: Option<String>,
     /// The laboratory.
+    #[schema(min_length = 1, max_length = 200)]
     laboratory: Option<String>,
     /// The values, 1 to 50.
+    #[schema(min_items = 1, max_items = 50)]
     values: Vec<NewValue>,
     /// A remark.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     note: Option<String>,
 }
 
@@ -66,6 +69,7 @@ pub(crate) struct NewValue {
     #[schema(example = "27.0")]
     sample_temperature: Option<String>,
     /// How it was measured.
+    #[schema(min_length = 1, max_length = 200)]
     method: Option<String>,
     /// The instrument's id.
     instrument: Option<Uuid>,
@@ -74,6 +78,7 @@ pub(crate) struct NewValue {
 impl NewValue {
     /// The value, its words checked; its number is checked by the book.
     pub(crate) fn read(self, faults: &mut Faults, at: &str) -> Reading {
+        faults.name(&format!("{at}/method"), self.method.as_deref());
         if self.qualifier.as_deref().is_some_and(|q| !["<", ">", "about"].contains(&q)) {
             faults.note(&format!("{at}/qualifier"), "use <, > or about");
         }
@@ -102,6 +107,9 @@ impl NewReading {
         batch: BatchId,
         now: Micros,
     ) -> Option<TakeReading> {
+        faults.name("/sample", self.sample.as_deref());
+        faults.name("/laboratory", self.laboratory.as_deref());
+        faults.words("/note", self.note.as_deref());
         let taken_at = faults.at("/taken_at", stated_time(&self.taken_at, now));
         let optional = |faults: &mut Faults, at: &str, text: Option<&str>| -> Option<Stamp> {
             text.and_then(|text| faults.at(at, stated_time(text, now)))

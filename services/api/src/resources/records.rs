@@ -10,6 +10,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::{IntoParams, ToSchema};
 use uuid::Uuid;
 
+use crate::amounts::Faults;
 use crate::asking::print;
 use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
@@ -55,7 +56,7 @@ pub(crate) async fn show(
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewIssue {
     /// To whom.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     to: String,
 }
 
@@ -83,6 +84,9 @@ pub(crate) async fn issue(
     Strict { value, raw }: Strict<NewIssue>,
 ) -> Result<(StatusCode, Json<IssuedView>), Problem> {
     let print = print("POST", &format!("/v1/batches/{id}/record"), &raw)?;
+    let mut faults = Faults::default();
+    faults.name("/to", value.to.as_str());
+    faults.finish(Some(()))?;
     let issued = house.issue_record((&caller).into(), key, print, BatchId(id), value.to).await?;
     let view = IssuedView {
         recorded: Recorded::entry(&issued.receipt),

@@ -98,7 +98,7 @@ pub(crate) struct NewAdoption {
     #[schema(example = "production")]
     standing: String,
     /// Which market, with `market`.
-    #[schema(example = "EU")]
+    #[schema(example = "EU", min_length = 1, max_length = 40)]
     market: Option<String>,
     /// The digest of the text that was read and agreed to.
     digest: String,
@@ -126,6 +126,7 @@ pub(crate) async fn adopt(
     if value.digest != digest(text) {
         faults.note("/digest", "this is not the digest of the shipped text: read it again");
     }
+    faults.code("/market", value.market.as_deref());
     let standing = match (value.standing.as_str(), value.market) {
         ("production", None) => Some(Standing::Production),
         ("market", Some(market)) => Some(Standing::Market(market)),

@@ -10,6 +10,7 @@ use house::House;
 use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 
+use crate::amounts::Faults;
 use crate::asking::{asked, print};
 use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
@@ -68,7 +69,7 @@ pub(crate) struct ChangeSettings {
     /// Name → decimal text.
     settings: BTreeMap<String, String>,
     /// Why.
-    #[schema(max_length = 2000)]
+    #[schema(min_length = 1, max_length = 2000)]
     reason: String,
 }
 
@@ -83,6 +84,9 @@ pub(crate) async fn change(
     Strict { value, raw }: Strict<ChangeSettings>,
 ) -> Result<Json<Recorded>, Problem> {
     let print = print("PATCH", "/v1/settings", &raw)?;
+    let mut faults = Faults::default();
+    faults.words("/reason", value.reason.as_str());
+    faults.finish(Some(()))?;
     let act = Act::ChangeSettings(value.settings, value.reason);
     let receipt = house.submit(asked(&caller, key, print, act)).await?;
     Ok(Json(Recorded::of(&receipt, "", caller.site.0)))

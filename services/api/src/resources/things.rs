@@ -19,7 +19,7 @@ use serde_json::Value;
 use utoipa::ToSchema;
 use uuid::Uuid;
 
-use crate::amounts::{Amount, Faults};
+use crate::amounts::{Amount, Faults, LONGEST_LIST, MOST_SUBSTANCES};
 use crate::asking::{asked, expecting, print};
 use crate::caller::Caller;
 use crate::etag::{IfMatch, etag, unchanged};
@@ -49,10 +49,10 @@ pub(crate) struct ThingView {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewMaterial {
     /// Short code, unique in the site.
-    #[schema(example = "DAP", max_length = 40)]
+    #[schema(example = "DAP", min_length = 1, max_length = 40)]
     code: String,
     /// Name as printed.
-    #[schema(example = "diammonium phosphate", max_length = 200)]
+    #[schema(example = "diammonium phosphate", min_length = 1, max_length = 200)]
     name: String,
     /// nutrient, yeast, sulfite, enzyme, sugar, fruit, water, base, other.
     #[schema(example = "nutrient")]
@@ -62,9 +62,11 @@ pub(crate) struct NewMaterial {
     dimension: String,
     /// The names under which positive lists know it.
     #[serde(default)]
+    #[schema(max_items = 50)]
     listed_as: Vec<String>,
     /// What it holds, as mass fractions.
     #[serde(default)]
+    #[schema(max_items = 100)]
     composition: Vec<NewComponent>,
 }
 
@@ -73,7 +75,7 @@ pub(crate) struct NewMaterial {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewComponent {
     /// The substance, named as rules name it.
-    #[schema(example = "diammonium_phosphate")]
+    #[schema(example = "diammonium_phosphate", min_length = 1, max_length = 200)]
     pub(crate) substance: String,
     /// Mass fraction: `%`, `g/kg`, `mg/kg` or `g/g`.
     pub(crate) fraction: Amount,
@@ -81,6 +83,9 @@ pub(crate) struct NewComponent {
 
 /// Reads a composition.
 pub(crate) fn composition(faults: &mut Faults, parts: &[NewComponent]) -> Vec<Component> {
+    faults.list("/composition", parts, MOST_SUBSTANCES, |faults, at, part| {
+        faults.name(&format!("{at}/substance"), part.substance.as_str());
+    });
     let mut total = 0;
     let mut read = Vec::new();
     for (index, part) in parts.iter().enumerate() {
@@ -101,14 +106,16 @@ pub(crate) fn composition(faults: &mut Faults, parts: &[NewComponent]) -> Vec<Co
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewParty {
     /// Short code, unique in the site.
-    #[schema(max_length = 40)]
+    #[schema(min_length = 1, max_length = 40)]
     code: String,
     /// The firm.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
     /// Postal address.
+    #[schema(min_length = 1, max_length = 2000)]
     address: Option<String>,
     /// Licence or permit number.
+    #[schema(min_length = 1, max_length = 200)]
     licence: Option<String>,
 }
 
@@ -117,14 +124,15 @@ pub(crate) struct NewParty {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewVessel {
     /// Name on its plate, unique in the site.
-    #[schema(example = "T-12", max_length = 40)]
+    #[schema(example = "T-12", min_length = 1, max_length = 40)]
     code: String,
     /// What it is.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
     /// Working capacity.
     capacity: Amount,
     /// The premises it stands on, by code.
+    #[schema(min_length = 1, max_length = 40)]
     premises: String,
 }
 
@@ -133,21 +141,33 @@ pub(crate) struct NewVessel {
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewInstrument {
     /// Short code, unique in the site.
-    #[schema(max_length = 40)]
+    #[schema(min_length = 1, max_length = 40)]
     code: String,
     /// What it is.
-    #[schema(max_length = 200)]
+    #[schema(min_length = 1, max_length = 200)]
     name: String,
     /// Last calibration, `YYYY-MM-DD`.
     calibrated_on: Option<String>,
     /// Due again by, `YYYY-MM-DD`.
     calibration_due: Option<String>,
     /// Number of the certificate.
+    #[schema(min_length = 1, max_length = 200)]
     certificate: Option<String>,
 }
 
-fn material(id: Uuid, new: NewMaterial) -> Result<Act, Problem> {
+/// What all four have in common.
+fn named(code: &str, name: &str) -> Faults {
     let mut faults = Faults::default();
+    faults.code("/code", code);
+    faults.name("/name", name);
+    faults
+}
+
+fn material(id: Uuid, new: NewMaterial) -> Result<Act, Problem> {
+    let mut faults = named(&new.code, &new.name);
+    faults.list("/listed_as", &new.listed_as, LONGEST_LIST, |faults, at, name| {
+        faults.name(at, name.as_str());
+    });
     if Category::of(&new.category).is_none() {
         let names: Vec<_> = Category::ALL.iter().map(|category| category.name()).collect();
         faults.note("/category", format!("use one of {}", names.join(", ")));
@@ -167,19 +187,22 @@ fn material(id: Uuid, new: NewMaterial) -> Result<Act, Problem> {
     })))
 }
 
-#[expect(clippy::unnecessary_wraps, reason = "the four kinds share their signature")]
 fn party(id: Uuid, new: NewParty) -> Result<Act, Problem> {
-    Ok(Act::DescribeParty(PartyDescribed {
+    let mut faults = named(&new.code, &new.name);
+    faults.words("/address", new.address.as_deref());
+    faults.name("/licence", new.licence.as_deref());
+    faults.finish(Some(Act::DescribeParty(PartyDescribed {
         party: id.into(),
         code: new.code,
         name: new.name,
         address: new.address,
         licence: new.licence,
-    }))
+    })))
 }
 
 fn vessel(id: Uuid, new: NewVessel) -> Result<Act, Problem> {
-    let mut faults = Faults::default();
+    let mut faults = named(&new.code, &new.name);
+    faults.code("/premises", new.premises.as_str());
     let capacity = faults.amount("/capacity", &new.capacity, Dimension::Volume);
     faults.finish(capacity.map(|capacity| {
         Act::DescribeVessel(VesselDescribed {
@@ -193,7 +216,8 @@ fn vessel(id: Uuid, new: NewVessel) -> Result<Act, Problem> {
 }
 
 fn instrument(id: Uuid, new: NewInstrument) -> Result<Act, Problem> {
-    let mut faults = Faults::default();
+    let mut faults = named(&new.code, &new.name);
+    faults.name("/certificate", new.certificate.as_deref());
     for (pointer, date) in
         [("/calibrated_on", &new.calibrated_on), ("/calibration_due", &new.calibration_due)]
     {
