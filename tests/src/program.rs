@@ -366,7 +366,7 @@ fn read_greeting(printed: std::process::ChildStdout, running: &mut Running) {
 
 /// Only what a test says counts, not what the shell of whoever runs it says.
 fn only_our_settings(command: &mut Command) {
-    for name in ["DATA", "DATABASE", "SECRETS", "LISTEN", "PUBLIC_URL", "BEHIND_TLS"] {
+    for name in ["DATA", "DATABASE", "SECRETS", "LISTEN", "PUBLIC_URL", "BEHIND_TLS", "LOG"] {
         command.env_remove(format!("TALLYSTAVE_{name}"));
     }
     command.env_remove("TALLYSTAVE_SIMULATED_FROM");

@@ -10,24 +10,33 @@ use std::process::ExitCode;
 
 use clap::Parser as _;
 use house::clock::Clock;
+use tracing_subscriber::EnvFilter;
 
 use crate::config::{Cli, Command, CorrectClock, FoundingLink};
 
 #[tokio::main]
 async fn main() -> ExitCode {
+    let command = Cli::parse().command;
     tracing_subscriber::fmt()
         .with_env_filter(
-            tracing_subscriber::EnvFilter::try_from_env("TALLYSTAVE_LOG")
-                .unwrap_or_else(|_| "warn,sqlx=error".into()),
+            EnvFilter::try_from_env("TALLYSTAVE_LOG").unwrap_or_else(|_| logged(&command).into()),
         )
         .with_writer(std::io::stderr)
         .init();
-    match run(Cli::parse().command).await {
+    match run(command).await {
         Ok(()) => ExitCode::SUCCESS,
         Err(error) => {
             eprintln!("tallystave: {error:#}");
             ExitCode::FAILURE
         }
+    }
+}
+
+/// What is logged unless `TALLYSTAVE_LOG` says otherwise: requests where there are any, or else what went wrong.
+const fn logged(command: &Command) -> &'static str {
+    match command {
+        Command::Serve(_) => "info,sqlx=error",
+        _ => "warn,sqlx=error",
     }
 }
 
