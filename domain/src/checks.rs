@@ -20,7 +20,6 @@ mod measure;
 mod need;
 pub(crate) mod number;
 pub(crate) mod remedy;
-mod shown;
 pub(crate) mod situation;
 mod stock;
 mod substances;
@@ -35,7 +34,6 @@ pub use self::cautions::always as always_cautions;
 pub use self::finding::{
     Account, Assessment, Basis, Caution, Finding, FractionUsed, Remedy, SetUsed, Verdict,
 };
-pub use self::shown::{Window, shown_digest_input};
 pub use self::situation::{
     AdoptedSet, Category, Done, Fraction, Line, LotStatus, Preparation, Proposed, ProposedLine,
     Situation, Standing, Yan,
@@ -43,7 +41,7 @@ pub use self::situation::{
 pub use self::substances::nitrogen_mg_l;
 
 /// The version of the crate, and of the way it assesses.
-pub const ENGINE: &str = concat!(env!("CARGO_PKG_VERSION"), "/1");
+pub const ENGINE: &str = concat!("tallystave ", env!("CARGO_PKG_VERSION"), "/1");
 
 /// Holds a proposal against everything that binds it.
 pub fn assess(situation: &Situation<'_>, proposed: &Proposed) -> Assessment {

@@ -190,7 +190,11 @@ impl Quantity {
             Dimension::Count => "1",
             Dimension::Fraction => "g/g",
         };
-        Self { entered: base.to_string(), unit: unit.to_owned(), base }
+        let entered = match dimension {
+            Dimension::Fraction => format!("{}.{:09}", base / 1_000_000_000, base % 1_000_000_000),
+            _ => base.to_string(),
+        };
+        Self { entered, unit: unit.to_owned(), base }
     }
 
     /// Whether `base` is what `entered` and `unit` say: what `verify` recomputes.
@@ -234,7 +238,7 @@ impl fmt::Display for Quantity {
     }
 }
 
-/// A decimal number as typed: digits × 10^-places, at most 15 digits and 9 places.
+/// A decimal number as typed: digits × 10^-places, at most 16 digits and 9 places.
 #[derive(Clone, Copy, Debug, Eq, PartialEq)]
 pub struct Decimal {
     digits: i64,
@@ -258,7 +262,7 @@ impl Decimal {
         if whole.is_empty() || !all_digits(whole) || !all_digits(fraction) {
             return Err(not_decimal());
         }
-        if whole.len() + fraction.len() > 15 || fraction.len() > 9 {
+        if whole.len() + fraction.len() > 16 || fraction.len() > 9 {
             return Err(not_decimal());
         }
         let digits: i64 = format!("{whole}{fraction}").parse().map_err(|_| not_decimal())?;
@@ -282,7 +286,7 @@ impl Decimal {
     pub fn to_f64(self) -> f64 {
         #[expect(
             clippy::cast_precision_loss,
-            reason = "at most 15 digits, which a double holds exactly"
+            reason = "at most 16 digits, of which a double keeps all but the last bit"
         )]
         let digits = self.digits as f64;
         digits / 10_f64.powi(self.places.cast_signed())
@@ -347,6 +351,19 @@ mod tests {
         assert!(unknown.contains("[lb_av]"), "{unknown}");
         let wrong = Quantity::parse("1", "L", Dimension::Mass).unwrap_err().to_string();
         assert_eq!(wrong, "L is a unit of volume, but a mass is asked for here");
+    }
+
+    #[test]
+    fn a_computed_amount_is_what_it_says_up_to_the_largest() {
+        for dimension in [Dimension::Mass, Dimension::Volume, Dimension::Count, Dimension::Fraction]
+        {
+            for base in [0, 1, 212_137_000, dimension.largest()] {
+                assert!(
+                    Quantity::computed(base, dimension).is_consistent(),
+                    "{base} {dimension:?}"
+                );
+            }
+        }
     }
 
     #[test]

@@ -125,7 +125,7 @@ impl Cellar {
         for set in self.caro.get("/v1/rule-sets").expect(200).items() {
             let path = format!("/v1/rule-sets/{}/adoptions", set["id"].as_str().expect("an id"));
             let body = json!({"standing": "production", "digest": set["digest"], "from": from});
-            let _ = self.caro.post(&path, &body).expect(201);
+            self.caro.post(&path, &body).expect(201);
         }
     }
 
@@ -149,7 +149,7 @@ impl Cellar {
     /// If the clock is not driven.
     pub fn drive_to(&mut self, now: &str) {
         assert!(self.now.is_some(), "a real book runs on the machine's clock");
-        let _ = self.dov.request("POST", "/v1/clock").json(&json!({"now": now})).send().expect(200);
+        self.dov.request("POST", "/v1/clock").json(&json!({"now": now})).send().expect(200);
         self.now = Some(now.to_owned());
     }
 
@@ -251,7 +251,7 @@ impl Cellar {
     /// The body of a gravity reading.
     pub fn gravity_body(&self, sg: &str) -> Value {
         json!({"taken_at": self.now(), "values": [
-            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": "20.0"}]})
+            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": {"value": "20.0", "unit": "Cel"}}]})
     }
 
     /// Records the nitrogen of a sample taken now: ammonium nitrogen and primary amino nitrogen in mg/L.

@@ -7,7 +7,7 @@ use serde_json::{Value, json};
 use ureq::http::{HeaderMap, Request};
 
 /// The longest a test waits for one answer.
-const PATIENCE: Duration = Duration::from_secs(120);
+const PATIENCE: Duration = Duration::from_mins(2);
 
 /// Somebody who asks: an address, and a token once signed in. Clones share connections.
 #[derive(Clone, Debug)]
@@ -194,7 +194,10 @@ impl Answer {
     ///
     /// # Panics
     /// If it is another.
-    #[must_use]
+    #[expect(
+        clippy::return_self_not_must_use,
+        reason = "it asserts, and most tests ask for no more"
+    )]
     #[track_caller]
     pub fn expect(self, status: u16) -> Self {
         assert_eq!(self.status, status, "{self:?}");
@@ -205,6 +208,10 @@ impl Answer {
     ///
     /// # Panics
     /// If it is none.
+    #[expect(
+        clippy::return_self_not_must_use,
+        reason = "it asserts, and most tests ask for no more"
+    )]
     #[track_caller]
     pub fn expect_problem(self, status: u16, kind: &str) -> Self {
         assert_eq!(self.status, status, "{self:?}");

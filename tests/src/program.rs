@@ -15,7 +15,7 @@ use crate::postgres::Cluster;
 /// The role under which the program serves on PostgreSQL.
 pub const SERVING_ROLE: &str = "tallystave_app";
 /// The longest a start may take; an unoptimised program beside a compiler is slow.
-const START: Duration = Duration::from_secs(60);
+const START: Duration = Duration::from_mins(1);
 /// The longest an orderly end may take: the program gives requests under way 10 s.
 const END: Duration = Duration::from_secs(30);
 
@@ -115,18 +115,16 @@ impl Home {
     /// # Panics
     /// If they fail.
     pub fn sql(&self, text: &str) {
-        match &self.server {
-            Some((cluster, name)) => cluster.sql(name, text),
-            None => {
-                let script = "import sqlite3, sys\n\
-                              book = sqlite3.connect(sys.argv[1], timeout=30)\n\
-                              book.executescript(sys.argv[2])\n\
-                              book.commit()\n";
-                let mut python = Command::new("python3");
-                python.args(["-c", script]).arg(self.file()).arg(text);
-                outcome(python).expect_success();
-            }
+        if let Some((cluster, name)) = &self.server {
+            return cluster.sql(name, text);
         }
+        let script = "import sqlite3, sys\n\
+                      book = sqlite3.connect(sys.argv[1], timeout=30)\n\
+                      book.executescript(sys.argv[2])\n\
+                      book.commit()\n";
+        let mut python = Command::new("python3");
+        python.args(["-c", script]).arg(self.file()).arg(text);
+        outcome(python).expect_success();
     }
 
     /// A second directory of secrets with the same keys, as another machine of the same installation has it.
@@ -174,6 +172,10 @@ impl Outcome {
     ///
     /// # Panics
     /// If it is not.
+    #[expect(
+        clippy::return_self_not_must_use,
+        reason = "it asserts, and most tests ask for no more"
+    )]
     #[track_caller]
     pub fn expect_success(self) -> Self {
         self.expect_code(0)
@@ -183,6 +185,10 @@ impl Outcome {
     ///
     /// # Panics
     /// If it is another.
+    #[expect(
+        clippy::return_self_not_must_use,
+        reason = "it asserts, and most tests ask for no more"
+    )]
     #[track_caller]
     pub fn expect_code(self, code: i32) -> Self {
         assert_eq!(self.code, Some(code), "printed:\n{}\n{}", self.printed, self.complaints);

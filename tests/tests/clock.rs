@@ -35,7 +35,7 @@ fn set_back(engine: Engine) {
     assert!(again.complaints.contains("nothing to correct"), "{}", again.complaints);
 
     let answer = ana.post_as(&key, &path, &reading).expect(201);
-    assert!(answer.text("/entries/0/recorded_at") < "2098".to_owned(), "{answer:?}");
+    assert!(*answer.text("/entries/0/recorded_at") < *"2098", "{answer:?}");
     tests::cellar::deep_check(&home);
     let _: Client = ana;
 }

@@ -1,5 +1,4 @@
 //! The interface's description, judged by a stranger's validator.
-
 use std::process::Command;
 
 use tests::program::{binary, outcome};

@@ -1,4 +1,5 @@
 //! Published inputs, entered over REST in the units of their source.
+#![expect(clippy::unwrap_used, reason = "a test that finds nothing to unwrap fails, as it should")]
 
 use serde_json::{Value, json};
 use tests::{Answer, Cellar, on_both_engines};
@@ -59,7 +60,7 @@ on_both_engines! {
         let opened = cellar.receive("DP-0387", "DAP", "10", "kg");
         let fresh = cellar.receive("DP-0412", "DAP", "25", "kg");
         let batch = cellar.open("B1", "1000", "[gal_us]");
-        let _ = cellar.add_unasked(&batch, &[(&opened, "4", "[lb_av]")]).expect(201);
+        cellar.add_unasked(&batch, &[(&opened, "4", "[lb_av]")]).expect(201);
         is_within_the_dose(cellar.propose(&batch, &[(&fresh, "4", "[lb_av]")]));
         is_over_the_dose(cellar.propose(&batch, &[(&fresh, FOUR_POUNDS_AND_A_BIT, "g")]));
         cellar.deep_check();
@@ -76,7 +77,7 @@ on_both_engines! {
             let mut body = cellar.batch(code, "3000", "L");
             body["fermentable_sugar"] = json!({"g_per_l": "240", "basis": "composition"});
             let batch = cellar.ben.post("/v1/batches", &body).id();
-            let _ = cellar.nitrogen(&batch, "0", nitrogen);
+            cellar.nitrogen(&batch, "0", nitrogen);
             batch
         };
         let (fed, starving) = (must("FED", "300"), must("STARVING", "50"));

@@ -81,21 +81,16 @@ pub fn assess(desk: &Desk, question: &Question, now: Micros) -> Result<Prepared,
     let site = desk.site()?;
     let settings = settings_of(&site.settings)?;
     let batch_subject = Subject::from(question.batch);
-    desk.batch(question.batch)?;
     let past;
-    let batch = if question.already_done {
+    let mut batch = desk.batch(question.batch)?;
+    if question.already_done {
         past = batch_as_of(desk, question.batch, question.at)?;
-        &past
-    } else {
-        desk.batch(question.batch)?
-    };
-    let Some((_, opened)) = &batch.opened else {
-        return Err(Refusal::meaningless(
-            "/done_at",
-            "the batch was not open yet at that time: check the date, or open the batch earlier",
-        )
-        .into());
-    };
+        // Done before the stated opening: a true event all the same, judged on what is known of the batch now.
+        if past.opened.is_some() {
+            batch = &past;
+        }
+    }
+    let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
     let mut basis = vec![(desk.site_id().into(), desk.subject(desk.site_id().into())?.n)];
     basis.push((batch_subject, desk.subject(batch_subject)?.n));
     let mut lines = Vec::new();
@@ -340,7 +335,7 @@ fn sugar(batch: &BatchState, opened: &BatchOpened) -> Sugar {
 /// How much of the fermentable sugar will be gone at that time.
 pub(crate) fn fraction(batch: &BatchState, opened: &BatchOpened, at: Micros) -> Option<Fraction> {
     let original = batch.original()?;
-    let end: f64 = opened.expected_final.as_ref()?.extract.parse().ok()?;
+    let end: f64 = opened.expected_final.as_ref()?.apparent_extract_percent.parse().ok()?;
     let span = SugarSpan::new(OriginalExtract(original.extract), FinalExtract(end)).ok()?;
     let readings: Vec<Reading> = batch
         .gravities

@@ -140,13 +140,42 @@ bodies! {
     "vessel.described" 1 => VesselDescribed,
 }
 
+/// Entered later than the site allows, with what that was judged on.
+#[derive(Clone, Debug, serde::Deserialize, Eq, PartialEq, serde::Serialize)]
+#[serde(deny_unknown_fields)]
+pub struct Late {
+    /// The site's limit then, decimal text.
+    pub limit_hours: String,
+    /// Judged against when it was typed without network, or when it was recorded.
+    pub basis: LateBasis,
+    /// Why, as told.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reason: Option<String>,
+}
+
+/// On which time lateness was judged.
+#[derive(Clone, Copy, Debug, serde::Deserialize, Eq, PartialEq, serde::Serialize)]
+#[serde(rename_all = "snake_case")]
+pub enum LateBasis {
+    /// The device's clock, when it was typed.
+    Captured,
+    /// The server's clock.
+    Recorded,
+}
+
 impl Body {
+    /// The kind of readings, and the version they are written in.
+    pub const READING_TAKEN: (&'static str, u32) = ("reading.taken", 1);
+
     /// Whether an amendment may replace or void it: founding, keys, assessments, sign-offs, amendments and issued
-    /// records stand as they are.
+    /// records stand as they are; people and roles are set right by their opposite.
     pub const fn is_amendable(&self) -> bool {
         !matches!(
             self,
             Self::SiteFounded(_)
+                | Self::PersonEnrolled(_)
+                | Self::RoleGranted(_)
+                | Self::RoleWithdrawn(_)
                 | Self::ClockCorrected(_)
                 | Self::ProposalAssessed(_)
                 | Self::SignoffGiven(_)

@@ -366,6 +366,8 @@ pub enum AmendTo {
     Addition(Box<Add>),
     /// The receipt as it was.
     Receipt(Box<Receive>),
+    /// The opening of a batch as it was.
+    Opening(Box<OpenBatch>),
 }
 
 /// See [`Act::Issue`].

@@ -18,21 +18,25 @@ use std::collections::BTreeSet;
 
 use uuid::Uuid;
 
-use super::body::Body;
+use super::assessing::settings_of;
+use super::body::{Body, Late, LateBasis};
 use super::command::{Act, AmendTo, Command, Decision, Draft, Refusal, Stop};
 use super::desk::Desk;
 use super::role::Role;
 use super::subject::Subject;
 use crate::ids::{EntryId, SiteId};
+use crate::ledger::entry::Actor;
+use crate::settings::{Setting, Settings};
 use crate::stamp::{Micros, Stamp};
 
 /// The engine whose computed figures stand in entries.
-pub const ENGINE: &str = concat!("tallystave ", env!("CARGO_PKG_VERSION"));
+pub use crate::checks::ENGINE;
 
 /// Everything a decision leans on.
 pub(crate) struct Deciding<'a> {
     pub(crate) desk: &'a Desk,
     pub(crate) command: &'a Command,
+    roles: BTreeSet<Role>,
     pub(crate) now: Micros,
     draw: &'a mut dyn FnMut() -> Uuid,
 }
@@ -59,14 +63,69 @@ impl Deciding<'_> {
         }
     }
 
+    /// Whether something is entered later than the site allows, and on what that is judged.
+    pub(crate) fn late(
+        &self,
+        since: Stamp,
+        captured_at: Option<Stamp>,
+        reason: Option<&String>,
+    ) -> Result<Option<Late>, Stop> {
+        let settings = settings_of(&self.desk.site()?.settings)?;
+        Ok(late(&settings, since, captured_at, self.now, reason))
+    }
+
+    /// Now on the site's wall clock, and not before what was last said about the subject: what holds from now on must
+    /// come last in the fold, also after a clock was set back.
+    pub(crate) fn from_now_on(&self, subject: Subject) -> Result<Stamp, Stop> {
+        let newest = self.desk.subject(subject)?.entries.last().map(|entry| entry.occurred_at.at);
+        let at = newest.map_or(self.now, |newest| newest.max(self.now));
+        Ok(Stamp::in_zone(at, &lots::zone(self)?))
+    }
+
     /// Refuses unless the caller has one of these roles now.
     pub(crate) fn needs(&self, roles: &[Role], to: &str) -> Result<(), Refusal> {
-        if roles.iter().any(|role| self.command.roles.contains(role)) {
+        if roles.iter().any(|role| self.roles.contains(role)) {
             return Ok(());
         }
         let names: Vec<_> = roles.iter().map(|role| role.name()).collect();
         Err(Refusal::forbidden(format!("to {to} one needs the role {}", names.join(" or "))))
     }
+}
+
+/// What was captured without network counts from then, unless the device's clock is ahead of ours.
+pub(crate) fn late(
+    settings: &Settings,
+    since: Stamp,
+    captured_at: Option<Stamp>,
+    now: Micros,
+    reason: Option<&String>,
+) -> Option<Late> {
+    let (entered, basis) = match captured_at {
+        Some(captured) if captured.at < now => (captured.at, LateBasis::Captured),
+        _ => (now, LateBasis::Recorded),
+    };
+    let limit = Setting::LateEntryHours;
+    (entered.0 - since.at.0 > additions::span(settings, limit)).then(|| Late {
+        limit_hours: settings.text(limit).to_owned(),
+        basis,
+        reason: reason.cloned(),
+    })
+}
+
+/// What the actor may be at this moment, under the lock: of the roles the command came with, those still held.
+fn roles_now(desk: &Desk, command: &Command) -> Result<BTreeSet<Role>, Stop> {
+    if matches!(command.act, Act::Found(_)) {
+        return Ok(BTreeSet::new());
+    }
+    desk.site()?;
+    let Actor::Person(person) = command.actor else { return Ok(BTreeSet::new()) };
+    let held = &desk.person(person)?.roles;
+    let roles: BTreeSet<Role> = command.roles.intersection(held).copied().collect();
+    if roles.is_empty() {
+        let what = "your roles at this site were withdrawn: an administrator can grant them again";
+        return Err(Refusal::forbidden(what).into());
+    }
+    Ok(roles)
 }
 
 /// Decides.
@@ -79,11 +138,9 @@ pub(crate) fn decide(
     now: Micros,
     draw: &mut dyn FnMut() -> Uuid,
 ) -> Result<Decision, Stop> {
-    let mut deciding = Deciding { desk, command, now, draw };
+    let roles = roles_now(desk, command)?;
+    let mut deciding = Deciding { desk, command, roles, now, draw };
     let it = &mut deciding;
-    if !matches!(command.act, Act::Found(_)) {
-        desk.site()?;
-    }
     match &command.act {
         Act::Found(act) => site::found(it, act),
         Act::CorrectClock(act) => Ok(site::correct_clock(it, act)),

@@ -25,7 +25,8 @@ use crate::ids::{
     BatchId, DeviationId, EntryId, HoldingId, InstrumentId, LotId, MaterialId, PartyId, PersonId,
     SiteId, VesselId,
 };
-use crate::ledger::entry::{Cause, ENVELOPE, Entry, MAX_SUBJECTS, Numbered};
+use crate::ledger::canonical::MAX_ENTRY_BYTES;
+use crate::ledger::entry::{Actor, Cause, ENVELOPE, Entry, MAX_SUBJECTS, Numbered};
 use crate::ledger::tree::{Frontier, Hash, leaf_hash};
 use crate::rules::RuleSet;
 use crate::stamp::Micros;
@@ -218,7 +219,11 @@ impl Desk {
 
     /// What a command will surely touch, so that counters can be read in one statement.
     pub fn subjects_of(&self, command: &Command) -> Vec<Subject> {
-        decide::subjects_of(self.site, &command.act)
+        let mut subjects = decide::subjects_of(self.site, &command.act);
+        if let Actor::Person(person) = command.actor {
+            subjects.push(person.into());
+        }
+        subjects
     }
 
     /// Decides a command on what lies here.
@@ -250,6 +255,7 @@ impl Desk {
         }
         let decision = decide::decide(self, command, now, draw)?;
         self.all_loaded(&decision)?;
+        decision.drafts.iter().try_for_each(fits_one_entry)?;
         Ok(decision)
     }
 
@@ -610,6 +616,26 @@ fn difference(before: Vec<Row>, after: Vec<Row>, changes: &mut Vec<Change>) {
     }
     changes
         .extend(left.into_iter().map(|((_, key), row)| Change::Remove { table: row.table, key }));
+}
+
+/// What is too long for one entry is refused here, before anything is numbered.
+fn fits_one_entry(draft: &Draft) -> Result<(), Refusal> {
+    /// Bytes that envelope and one subject take at most.
+    const ENVELOPE_BYTES: usize = 1_500;
+    const SUBJECT_BYTES: usize = 100;
+    let subjects = draft.subjects.len();
+    let body = draft.body.write().map(|value| value.to_string().len()).unwrap_or(usize::MAX);
+    let bytes = body.saturating_add(ENVELOPE_BYTES + subjects * SUBJECT_BYTES);
+    if subjects <= MAX_SUBJECTS && bytes <= MAX_ENTRY_BYTES {
+        return Ok(());
+    }
+    Err(Refusal::meaningless(
+        "",
+        format!(
+            "this is too much for one entry ({subjects} things, {bytes} bytes; at most {MAX_SUBJECTS} and \
+             {MAX_ENTRY_BYTES}): record it in several parts, or shorten the texts"
+        ),
+    ))
 }
 
 /// After a correction the log goes on from what the clock says now.

@@ -128,8 +128,8 @@ impl InForce {
         });
         let inconsistent =
             |detail: &str| FoldError::Inconsistent { seq: by.seq, detail: detail.to_owned() };
-        let reread = |value: &serde_json::Value| {
-            Body::read(&amendment.target.kind, amendment.target.kv, value)
+        let reread = |kv: u32, value: &serde_json::Value| {
+            Body::read(&amendment.target.kind, kv, value)
                 .map_err(|source| FoldError::Body { seq: by.seq, source })
         };
         match &amendment.effect {
@@ -142,7 +142,7 @@ impl InForce {
                     .iter()
                     .map(|s| Subject { kind: s.kind, id: s.id })
                     .collect();
-                next.body = Arc::new(reread(&replacement.body)?);
+                next.body = Arc::new(reread(replacement.kv, &replacement.body)?);
             }
             Effect::Item(change) => {
                 let mut value =
@@ -152,7 +152,7 @@ impl InForce {
                     .and_then(|index| value.get_mut("values")?.get_mut(index))
                     .ok_or_else(|| inconsistent("its target has no such value"))?;
                 *item = change.value.clone();
-                next.body = Arc::new(reread(&value)?);
+                next.body = Arc::new(reread(change.kv, &value)?);
             }
         }
         Ok(next)
@@ -216,7 +216,7 @@ fn moved_in(by: &Entry, amendment: &EntryAmended) -> Result<InForce, FoldError> 
         });
     };
     let target = &amendment.target;
-    let body = Body::read(&target.kind, target.kv, &replacement.body)
+    let body = Body::read(&target.kind, replacement.kv, &replacement.body)
         .map_err(|source| FoldError::Body { seq: by.seq, source })?;
     Ok(InForce {
         seq: target.seq,

@@ -65,7 +65,7 @@ pub struct Cause {
     pub print: String,
 }
 
-/// Who acted.
+/// Who acted: written `person:` and the pseudonym, or `system`. Keys of sensors will be written `key:`.
 #[derive(Clone, Copy, Debug, Eq, PartialEq)]
 pub enum Actor {
     /// A person.
@@ -77,7 +77,7 @@ pub enum Actor {
 impl std::fmt::Display for Actor {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
-            Self::Person(person) => person.fmt(f),
+            Self::Person(person) => write!(f, "person:{person}"),
             Self::System => f.write_str("system"),
         }
     }
@@ -92,9 +92,10 @@ impl Serialize for Actor {
 impl<'de> Deserialize<'de> for Actor {
     fn deserialize<D: serde::Deserializer<'de>>(deserializer: D) -> Result<Self, D::Error> {
         let text = std::borrow::Cow::<'_, str>::deserialize(deserializer)?;
-        match text.as_ref() {
-            "system" => Ok(Self::System),
-            id => id.parse().map(Self::Person).map_err(serde::de::Error::custom),
+        match text.split_once(':') {
+            None if text == "system" => Ok(Self::System),
+            Some(("person", id)) => id.parse().map(Self::Person).map_err(serde::de::Error::custom),
+            _ => Err(serde::de::Error::custom("an actor is `system` or `person:` and an id")),
         }
     }
 }
@@ -131,6 +132,65 @@ impl Numbered {
     /// The subject without its number.
     pub const fn subject(&self) -> Subject {
         Subject { kind: self.kind, id: self.id }
+    }
+}
+
+/// An entry as a verifier reads it: whatever newer program wrote it, with kinds, subjects and doors of its own, its
+/// bytes, order, numbers and hashes can be checked.
+#[derive(Clone, Debug, Deserialize, PartialEq)]
+#[serde(deny_unknown_fields)]
+pub struct Envelope {
+    /// Version of the envelope.
+    pub v: u32,
+    /// The log.
+    pub site: SiteId,
+    /// The leaf index in it.
+    pub seq: u64,
+    /// Its own id.
+    pub id: EntryId,
+    /// What happened.
+    pub kind: String,
+    /// Version of the body.
+    pub kv: u32,
+    /// When it happened.
+    pub occurred_at: Stamp,
+    /// The device's clock.
+    #[serde(default)]
+    pub captured_at: Option<Stamp>,
+    /// The server's clock.
+    pub recorded_at: Micros,
+    /// The command that wrote it.
+    pub cause: Cause,
+    /// Who.
+    pub actor: String,
+    /// Through which door.
+    pub via: String,
+    /// What it is about.
+    pub subjects: Vec<AnySubject>,
+    /// What it says.
+    pub body: Value,
+}
+
+/// A subject of whatever kind, with its running number.
+#[derive(Clone, Debug, Deserialize, Eq, PartialEq)]
+#[serde(deny_unknown_fields)]
+pub struct AnySubject {
+    /// What it is.
+    pub kind: String,
+    /// Which one.
+    pub id: Uuid,
+    /// The how-manieth entry about it.
+    pub n: u64,
+}
+
+impl Envelope {
+    /// Reads an entry and proves that its bytes are the canonical ones.
+    ///
+    /// # Errors
+    /// [`NotAnEntry`].
+    pub fn verify_bytes(bytes: &[u8]) -> Result<Self, NotAnEntry> {
+        let value = is_canonical(bytes)?;
+        serde_json::from_value(value).map_err(|e| NotAnEntry::Shape(e.to_string()))
     }
 }
 

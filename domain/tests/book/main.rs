@@ -5,6 +5,7 @@
 
 mod bench;
 mod cellar;
+mod corrections;
 mod decisions;
 mod examples;
 mod histories;

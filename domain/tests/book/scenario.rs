@@ -3,6 +3,7 @@
 
 use std::sync::Arc;
 
+use domain::book::body::readings::Temperature;
 use domain::book::body::{Body, LotStatus};
 use domain::book::command::{Act, Amend, AmendTo, OpenBatch, ResolveDeviation};
 use domain::book::state::State;
@@ -147,7 +148,8 @@ fn play_wash(cellar: &mut Cellar, typed: &str) -> Wash {
     let batch = cellar.open(opening);
     cellar.clock("09-22 10:00");
     let mut first = reading(batch, "09-22 10:00", &[("gravity", "1.0665", "sg_20_20")]);
-    first.values[0].sample_temperature = Some("27.0".to_owned());
+    first.values[0].sample_temperature =
+        Some(Temperature { value: "27.0".to_owned(), unit: "Cel".to_owned() });
     first.values[0].instrument = Some(cellar.instrument("H-1"));
     cellar.take(first);
     cellar.nitrogen(batch, "09-21 15:00", "09-22 10:10", ["12", "N", "46"]);
@@ -259,7 +261,7 @@ fn a_held_lot_is_refused_and_the_late_dose_goes_in_under_a_signature() {
     assert_eq!(must.late_done.len(), 1, "no deviation opens");
     let done = addition_of(&must.late_done[0]);
     assert_eq!(done.assessment.verdict, Verdict::Refer);
-    assert!(!done.late && done.shortfalls.is_empty() && done.already_done.is_none());
+    assert!(done.late.is_none() && done.shortfalls.is_empty() && done.already_done.is_none());
     let State::Batch(batch) = cellar.state(must.batch) else { panic!() };
     let proposal = &batch.proposals[&late.said.proposal];
     assert_eq!(proposal.done_by, Some(must.late_done[0].seq));
@@ -297,7 +299,7 @@ fn the_dose_thrown_in_at_night_is_recorded_late_with_one_deviation() {
     let (_, wash) = play(&mut cellar);
     let [addition, deviation] = wash.at_night.as_slice() else { panic!("{:?}", wash.at_night) };
     let done = addition_of(addition);
-    assert!(done.late);
+    assert!(done.late.is_some());
     assert_eq!(done.assessment.verdict, Verdict::Refer);
     let expected =
         ["common-practice.sugar-used", "common-practice.excess", "common-practice.powder"];

@@ -21,7 +21,7 @@ use crate::clock::Clock;
 use crate::error::HouseError;
 use crate::ids::Ids;
 use crate::passwords::Passwords;
-use crate::secrets::{LastSigned, LastSignedError, Secrets};
+use crate::secrets::Secrets;
 use crate::tokens::Tokens;
 
 /// Everything the use cases share. Clones are the same house.
@@ -37,7 +37,6 @@ pub(crate) struct Inner {
     pub(crate) prover: Prover,
     pub(crate) clock: Clock,
     pub(crate) secrets: Arc<Secrets>,
-    pub(crate) last_signed: Arc<LastSigned>,
     pub(crate) passwords: Passwords,
     pub(crate) tokens: Tokens,
 }
@@ -50,13 +49,10 @@ impl House {
     pub async fn open(db: Db, secrets: Secrets, clock: Clock) -> Result<Self, HouseError> {
         let secrets = Arc::new(secrets);
         let tokens = Tokens::new(secrets.token_key(), "tallystave")?;
-        let last_signed =
-            Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
-        let writers = Writers::new(db.clone(), tools(&secrets, &clock, &last_signed));
+        let writers = Writers::new(db.clone(), tools(&secrets, &clock)?);
         let inner = Inner {
             db,
             writers,
-            last_signed,
             prover: Prover::default(),
             clock,
             secrets,
@@ -71,18 +67,8 @@ impl House {
 
     /// A book put back from an older state, or changed behind our back, is not signed again under the same key.
     async fn continues_what_was_signed(&self) -> Result<(), HouseError> {
-        let failed = |error: LastSignedError| HouseError::Failed(error.to_string());
-        let memory = &self.inner.last_signed;
         for site in self.sites().await? {
-            let Some(old) = memory.last(&site.origin).map_err(failed)? else { continue };
-            let mut held = self.inner.db.reader().await?;
-            let head = store::log::head(&mut held.conn(), site.number).await?;
-            let now = TreeHead { size: head.frontier.size(), root: head.root };
-            let root = match old.size <= now.size {
-                true => store::tiles::root_at(&mut held.conn(), site.number, old.size).await?,
-                false => head.root,
-            };
-            memory.check(&site.origin, now, |old| old.root == root).map_err(failed)?;
+            self.inner.writers.check_continues(&site).await?;
         }
         Ok(())
     }
@@ -253,7 +239,7 @@ impl House {
         for site in self.sites().await? {
             self.head(&site).await?;
         }
-        Ok(())
+        self.continues_what_was_signed().await
     }
 
     /// The newest head of a site's log, its signature checked.
@@ -304,24 +290,25 @@ pub struct Asked {
 }
 
 /// Clock, ids and signatures for the writer.
-fn tools(secrets: &Arc<Secrets>, clock: &Clock, last: &Arc<LastSigned>) -> Tools {
+fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
+    let last = Arc::new(secrets.last_signed().map_err(|e| HouseError::Failed(e.to_string()))?);
+    let memory = Arc::clone(&last);
     let (time, id_time, key) = (clock.clone(), clock.clone(), Arc::clone(secrets));
-    let (signed_before, remembered) = (Arc::clone(last), Arc::clone(last));
-    Tools {
+    Ok(Tools {
         clock: Arc::new(move || time.now()),
         // Without randomness the command fails, and only it: the writer catches the panic.
         draw: Arc::new(move || Ids.draw(id_time.now()).unwrap_or_else(|error| panic!("{error}"))),
-        signed_last: Arc::new(move |origin: &str| {
-            signed_before.last(origin).map_err(|error| error.to_string())
-        }),
         sign: Arc::new(move |origin: &str, size: u64, root: &Hash| {
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(key.log_key()).map_err(|e| e.to_string())
         }),
         committed: Arc::new(move |origin: &str, head: &TreeHead| {
-            if let Err(error) = remembered.store(origin, *head) {
+            if let Err(error) = last.store(origin, *head) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
         }),
-    }
+        remembered: Arc::new(move |origin: &str| {
+            memory.last(origin).map_err(|error| error.to_string())
+        }),
+    })
 }

@@ -109,7 +109,7 @@ pub const TABLE: &[Row] = &[
     row("GET", "/v1/records/{id}", Who::AnyRole),
     // Entries.
     row("GET", "/v1/entries/{id}", Who::AnyRole),
-    row("POST", "/v1/entries/{id}/amendments", CELLAR_AND_UP),
+    row("POST", "/v1/entries/{id}/amendments", Who::Roles(&[Cellar, Lead, Quality, Admin])),
     row("POST", "/v1/entries/{id}/signoffs", LEAD_OR_QUALITY),
     // Deviations.
     row("GET", "/v1/deviations", Who::AnyRole),

@@ -77,7 +77,7 @@ pub(crate) async fn put(
     Ok(())
 }
 
-/// Brings an edge to where the log's head is: by what was written since (`true`), or from the stored tiles.
+/// Brings an edge to where the log's head is: by what was written since, or from the stored tiles.
 ///
 /// # Errors
 /// [`StoreError::Inconsistent`] if the stored tiles and leaf hashes do not lead to the head.
@@ -86,11 +86,10 @@ pub(crate) async fn catch_up(
     site: SiteNumber,
     edge: &mut Edge,
     head: &Head,
-) -> Result<bool, StoreError> {
+) -> Result<(), StoreError> {
     let end = head.frontier.size();
     let plan = EdgePlan::new(end);
-    let follows = plan.leaves().start <= edge.size() && edge.size() <= end;
-    if !follows {
+    if edge.size() < plan.leaves().start || edge.size() > end {
         let tiles = fetch(conn, site, plan.tiles()).await?;
         let leaves = leaf_hashes(conn, site, plan.leaves()).await?;
         *edge = plan.load(&leaves, &tiles).map_err(odd)?;
@@ -98,9 +97,11 @@ pub(crate) async fn catch_up(
         for leaf in leaf_hashes(conn, site, edge.size()..end).await? {
             edge.push(leaf);
         }
+    } else {
+        return Ok(());
     }
     if edge.frontier() == head.frontier {
-        Ok(follows)
+        Ok(())
     } else {
         Err(StoreError::inconsistent("the tree over the entries is not that of the head"))
     }

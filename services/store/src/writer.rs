@@ -7,7 +7,7 @@
 
 mod bench;
 mod clock;
-mod continuity;
+mod continuing;
 mod drawn;
 mod group;
 mod sheet;
@@ -26,20 +26,21 @@ use tokio::sync::{mpsc, oneshot};
 use tokio::task::JoinHandle;
 use uuid::Uuid;
 
+use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Db, StoreError};
+use crate::{Db, StoreError, log};
 
 /// Commands in one commit at most.
 pub const GROUP: usize = 256;
-
-/// Says which head of a log the key signed last, if it remembers one.
-pub type SignedLast = dyn Fn(&str) -> Result<Option<TreeHead>, String> + Send + Sync;
 
 /// Signs a log's size and root under its origin, and gives the signed note.
 pub type Sign = dyn Fn(&str, u64, &Hash) -> Result<String, String> + Send + Sync;
 
 /// Hears which head of which origin is durable now.
 pub type Committed = dyn Fn(&str, &TreeHead) + Send + Sync;
+
+/// Tells which head of an origin was heard of as durable last, if one was.
+pub type Remembered = dyn Fn(&str) -> Result<Option<TreeHead>, String> + Send + Sync;
 
 /// What the writer cannot have from its arguments.
 #[derive(Clone)]
@@ -48,13 +49,12 @@ pub struct Tools {
     pub clock: Arc<dyn Fn() -> Micros + Send + Sync>,
     /// New ids, unguessable ones.
     pub draw: Arc<dyn Fn() -> Uuid + Send + Sync>,
-    /// Remembers what the key signed last: a log that does not continue it is not signed. Asked for every group, so it
-    /// must be quick.
-    pub signed_last: Arc<SignedLast>,
     /// Signs the head of a group before it is committed.
     pub sign: Arc<Sign>,
     /// Told after the commit which head of which origin is now durable, to be remembered beside the key.
     pub committed: Arc<Committed>,
+    /// What is remembered beside the key: a log that does not continue it is not written on.
+    pub remembered: Arc<Remembered>,
 }
 
 impl fmt::Debug for Tools {
@@ -198,6 +198,18 @@ impl Writers {
         let sender = self.sender(site)?;
         sender.send(Job { site, command, answer }).await.map_err(|_| WriteError::Closing)?;
         answered.await.map_err(|_| WriteError::Closing)?
+    }
+
+    /// Whether a site's log continues what is remembered beside the key; otherwise nothing will be written to it.
+    ///
+    /// # Errors
+    /// [`WriteError::Unsigned`], or that it cannot be read.
+    pub async fn check_continues(&self, site: &Site) -> Result<(), WriteError> {
+        let remembered = continuing::remembered(&self.shared.tools, site)?;
+        let mut held = self.shared.db.reader().await?;
+        let mut conn = held.conn();
+        let head = log::head(&mut conn, site.number).await?;
+        continuing::check(&mut conn, site, remembered, &head.tree_head()).await
     }
 
     /// What was done so far.

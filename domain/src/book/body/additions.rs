@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::Late;
 use super::lots::Leg;
 use super::things::Component;
 use crate::checks::Assessment;
@@ -99,7 +100,8 @@ pub struct AdditionRecorded {
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub already_done: Option<String>,
     /// Entered later than the site allows.
-    pub late: bool,
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub late: Option<Late>,
     /// The answer for what was done, as of when it was done.
     pub assessment: Assessment,
     /// What the book could not cover, by lot.

@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::Late;
 use super::additions::Shortfall;
 use super::lots::Leg;
 use crate::ids::{BatchId, HoldingId, LotId, VesselId};
@@ -55,6 +56,9 @@ pub struct BatchOpened {
     /// What the book could not cover, by lot.
     #[serde(skip_serializing_if = "Vec::is_empty", default)]
     pub shortfalls: Vec<Shortfall>,
+    /// Entered later than the site allows.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub late: Option<Late>,
     /// Movements.
     pub legs: Vec<Leg>,
 }
@@ -68,9 +72,13 @@ pub struct ExpectedFinal {
     /// Its scale.
     pub scale: String,
     /// Apparent extract at that gravity, % by mass.
-    pub extract: String,
+    pub apparent_extract_percent: String,
     /// From what it follows: composition, laboratory, earlier batches.
     pub basis: String,
+    /// The formula behind the extract and its source.
+    pub method: String,
+    /// The engine that computed it.
+    pub engine: String,
 }
 
 /// Sugar that yeast can take.

@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::Late;
 use super::things::Component;
 use crate::ids::{HoldingId, LotId, MaterialId, PartyId};
 use crate::stamp::Stamp;
@@ -70,6 +71,9 @@ pub struct LotReceived {
     pub composition: Vec<Component>,
     /// Where it may be used from the start.
     pub status: LotStatus,
+    /// Entered later than the site allows.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub late: Option<Late>,
     /// Movements.
     pub legs: Vec<Leg>,
 }

@@ -123,6 +123,8 @@ pub enum Effect {
 pub struct ItemChange {
     /// Which, from 0.
     pub index: u32,
+    /// Version of the body that the value is written in.
+    pub kv: u32,
     /// How it reads.
     pub value: Value,
 }
@@ -140,6 +142,8 @@ pub struct Replacement {
     pub occurred_at: Stamp,
     /// What it is about.
     pub subjects: Vec<About>,
+    /// Version of the body.
+    pub kv: u32,
     /// The body, of the same kind.
     pub body: Value,
 }

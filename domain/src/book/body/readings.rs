@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::Late;
 use crate::ids::{BatchId, HoldingId, InstrumentId};
 use crate::stamp::Stamp;
 
@@ -30,6 +31,9 @@ pub struct ReadingTaken {
     /// A remark.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub note: Option<String>,
+    /// Entered later than the site allows; a laboratory result counts from when it was reported.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub late: Option<Late>,
 }
 
 /// One value.
@@ -48,9 +52,9 @@ pub struct Reading {
     /// For ions and acids: as what it is counted.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub expressed_as: Option<String>,
-    /// The sample's temperature in °C, for what depends on it.
+    /// The sample's temperature as entered, for what depends on it.
     #[serde(skip_serializing_if = "Option::is_none", default)]
-    pub sample_temperature: Option<String>,
+    pub sample_temperature: Option<Temperature>,
     /// How it was measured.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub method: Option<String>,
@@ -62,6 +66,28 @@ pub struct Reading {
     pub corrected: Option<CorrectedGravity>,
 }
 
+/// A temperature as entered.
+#[derive(Clone, Debug, Deserialize, Eq, PartialEq, Serialize)]
+#[serde(deny_unknown_fields)]
+pub struct Temperature {
+    /// Decimal text.
+    pub value: String,
+    /// `Cel` or `[degF]`.
+    pub unit: String,
+}
+
+impl Temperature {
+    /// In °C; `None` if the number or the unit is none.
+    pub fn celsius(&self) -> Option<f64> {
+        let number = crate::units::Decimal::parse(&self.value).ok()?.to_f64();
+        match self.unit.as_str() {
+            "Cel" => Some(number),
+            "[degF]" => Some((number - 32.0) / 1.8),
+            _ => None,
+        }
+    }
+}
+
 /// A gravity brought to the common scale, computed once and kept with its method.
 #[derive(Clone, Debug, Deserialize, Eq, PartialEq, Serialize)]
 #[serde(deny_unknown_fields)]
@@ -69,7 +95,7 @@ pub struct CorrectedGravity {
     /// Specific gravity 20/20 °C.
     pub sg_20_20: String,
     /// Apparent extract, % by mass; below zero in dry wine.
-    pub extract: String,
+    pub apparent_extract_percent: String,
     /// What was added to the reading, in its own scale.
     pub correction: String,
     /// The formula and its source.
@@ -83,11 +109,11 @@ pub struct CorrectedGravity {
 #[serde(deny_unknown_fields)]
 pub struct Nitrogen {
     /// As ammonium.
-    pub ammonium: String,
+    pub ammonium_mg_l: String,
     /// As primary amino nitrogen.
-    pub amino: String,
+    pub amino_mg_l: String,
     /// Both.
-    pub total: String,
+    pub total_mg_l: String,
     /// The formula and its source.
     pub method: String,
     /// The engine that computed it.

@@ -4,7 +4,10 @@
 //! out a proposal is held against it. An addition already made is always recorded; what is wrong with it opens one
 //! deviation with all that was found.
 
+use serde_json::json;
+
 use super::Deciding;
+use super::late;
 use super::lots::{derived, zone};
 use crate::book::assessing::{Prepared, Question, assess, settings_of};
 use crate::book::body::additions::Shortfall;
@@ -98,21 +101,31 @@ fn enough_lines(draws: &[Draw]) -> Result<(), Refusal> {
     Ok(())
 }
 
-/// SHA-256 over what a signer is shown: the proposal, its lines, its window, and everything that was found.
+/// SHA-256 over what a signer is shown: batch, proposal, lines, form, water, purpose, window, and all that was found.
 fn shown(act: &Propose, lapses_at: Stamp, prepared: &Prepared) -> Result<String, Stop> {
     let lines: Vec<_> = prepared
         .lines
         .iter()
-        .map(|line| serde_json::json!({"lot": line.lot_code, "material": line.material_name, "amount": line.amount}))
+        .map(|line| {
+            json!({"lot": line.lot_code, "material": line.material_name, "amount": line.amount})
+        })
         .collect();
-    let value = serde_json::json!({
+    let mut value = json!({
+        "batch": act.batch,
         "proposal": act.proposal,
         "planned_at": act.planned_at,
         "lapses_at": lapses_at,
         "lines": lines,
+        "preparation": act.preparation,
         "found": prepared.assessment.findings,
         "verdict": prepared.assessment.verdict,
     });
+    if let Some(water) = &act.carrier_water {
+        value["carrier_water"] = json!(water);
+    }
+    if let Some(purpose) = &act.purpose {
+        value["purpose"] = json!(purpose);
+    }
     crate::ledger::canonical::digest(&value)
         .map(|digest| digest.to_string())
         .map_err(|e| Refusal::meaningless("", e.to_string()).into())
@@ -189,7 +202,7 @@ pub(super) fn corrected(
     Ok(AdditionRecorded {
         proposal: old.proposal,
         already_done: old.already_done.clone(),
-        late: old.late,
+        late: old.late.clone(),
         ..body
     })
 }
@@ -256,7 +269,7 @@ fn recorded(
         found.assessment.findings.push(shortfall_finding(code, shortfall));
         found.assessment.verdict = found.assessment.verdict.max(Verdict::Refer);
     }
-    let recorded_at = act.captured_at.map_or(asking.now, |captured| captured.at.min(asking.now));
+    let late = late(settings, act.done_at, act.captured_at, asking.now, act.already_done.as_ref());
     Ok(AdditionRecorded {
         batch: act.batch,
         holding,
@@ -265,7 +278,7 @@ fn recorded(
         carrier_water: act.carrier_water.clone(),
         preparation: act.preparation,
         already_done: act.already_done.clone(),
-        late: recorded_at.0 - act.done_at.at.0 > span(settings, Setting::LateEntryHours),
+        late,
         assessment: found.assessment,
         shortfalls,
         legs,
@@ -346,18 +359,20 @@ fn held_against(
         .into());
     }
     same_amounts(act, &proposed.lines, settings)?;
+    same_way(act, proposed, settings)?;
     let verdict = proposed.assessment.verdict;
     if verdict == Verdict::Refuse {
         return Err(Refusal::conflict(format!("this proposal was refused: {instead}")).into());
     }
     let is_signed = proposal.signoffs.iter().any(|(signed_at, _, signoff)| {
         signoff.binds == proposed.shown
+            && signoff.meaning == APPROVED
             && !is_before(act.done_at, *signed_at)
             && signoff.valid_until.is_none_or(|until| act.done_at.at <= until.at)
     });
     if verdict == Verdict::Refer && !is_signed {
         return Err(Refusal::conflict(
-            "this proposal needs a second person's signature, which is missing, has run out or came after the fact",
+            "this proposal needs a second person's signature that approves the exception; it is missing, has run out or came after the fact",
         )
         .into());
     }
@@ -371,7 +386,7 @@ fn held_against(
     }
     let unsigned = now_found.findings.iter().find(|finding| {
         finding.verdict >= Verdict::Refer
-            && !proposed.assessment.findings.iter().any(|shown| shown.rule == finding.rule)
+            && !proposed.assessment.findings.iter().any(|shown| covers(shown, finding))
     });
     if let Some(finding) = unsigned {
         return Err(Refusal::conflict(format!(
@@ -381,6 +396,37 @@ fn held_against(
         .into());
     }
     Ok(())
+}
+
+/// What a signature must mean to let an exception pass.
+const APPROVED: &str = "approved the exception";
+
+/// Whether what was shown covers what is found now: the same rule about the same lot, and not less grave.
+fn covers(shown: &Finding, found: &Finding) -> bool {
+    shown.rule == found.rule
+        && shown.params.get("lot") == found.params.get("lot")
+        && shown.verdict >= found.verdict
+}
+
+/// The same form, and no more water than was proposed.
+fn same_way(act: &Add, proposed: &ProposalAssessed, settings: &Settings) -> Result<(), Refusal> {
+    if act.preparation != proposed.preparation {
+        return Err(Refusal::conflict("another form was proposed: propose it as it is done"));
+    }
+    let water = |quantity: &Option<Quantity>| quantity.as_ref().map_or(0, Quantity::base);
+    let wanted = water(&proposed.carrier_water);
+    if water(&act.carrier_water) > wanted + tolerated(wanted, settings) {
+        return Err(Refusal::conflict("more water than proposed carries it in: propose it anew"));
+    }
+    Ok(())
+}
+
+/// How far an amount may be from the proposed one.
+fn tolerated(base: i64, settings: &Settings) -> i64 {
+    Decimal::parse(settings.text(Setting::AmountTolerancePercent))
+        .ok()
+        .and_then(|percent| percent.scaled_by(base, 100))
+        .unwrap_or(0)
 }
 
 /// Whether it happened in an earlier minute: people write down minutes, the clock knows more.
@@ -400,10 +446,7 @@ fn same_amounts(act: &Add, proposed: &[Line], settings: &Settings) -> Result<(),
                 line.lot_code
             )));
         };
-        let tolerance = Decimal::parse(percent)
-            .ok()
-            .and_then(|percent| percent.scaled_by(line.amount.base(), 100))
-            .unwrap_or(0);
+        let tolerance = tolerated(line.amount.base(), settings);
         if (done.amount.base() - line.amount.base()).abs() > tolerance {
             return Err(Refusal::conflict(format!(
                 "{} of lot {} were proposed, {} are more than {percent} % away from it: propose the amount anew",

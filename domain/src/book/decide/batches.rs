@@ -1,17 +1,19 @@
 //! Opening a batch.
 
-use super::Deciding;
 use super::additions::{draw_legs, free_code, shortfall_finding};
 use super::lots::zone;
+use super::{Deciding, ENGINE};
 use crate::book::assessing::line_of;
-use crate::book::body::additions::Shortfall;
+use crate::book::body::LotStatus;
 use crate::book::body::{
     BatchOpened, DeviationOpened, Direction, ExpectedFinal, FermentableSugar, Leg, VesselDescribed,
 };
 use crate::book::command::{Decision, OpenBatch, Refusal, Stop, ingredient, not_ahead};
+use crate::book::desk::Desk;
 use crate::book::subject::{Subject, SubjectKind};
+use crate::checks::{Basis, Finding, Verdict};
 use crate::densimetry::{Scale, correct};
-use crate::ids::{DeviationId, HoldingId};
+use crate::ids::{BatchId, DeviationId, HoldingId, LotId};
 use crate::nitrogen::Demand;
 use crate::stamp::Stamp;
 
@@ -33,30 +35,67 @@ pub(super) fn open(it: &mut Deciding<'_>, act: &OpenBatch) -> Result<Decision, S
     if it.desk.subject(act.batch.into())?.n > 0 {
         return Err(Refusal::conflict("this batch has been opened already").into());
     }
-    not_ahead("/opened_at", act.opened_at, it.now)?;
     it.desk.code_is_free(SubjectKind::Batch, &act.code, act.batch.0)?;
-    let vessel = it.desk.vessel(act.vessel)?;
+    let holding: HoldingId = it.id();
+    let body = filled(it, it.desk, act, act.batch, holding)?;
+    let found = found_at_opening(it, &body)?;
+    let subjects = opening_subjects(&body);
+    let deviation = if found.is_empty() { None } else { Some(deviation_of(it, &body, found)?) };
+    let mut drafts = vec![it.draft(act.opened_at, subjects, body)];
+    if let Some((opened, subjects)) = deviation {
+        let at = Stamp::in_zone(it.now, &zone(it)?);
+        let opened = DeviationOpened { entry: Some(drafts[0].id), ..opened };
+        drafts.push(it.draft(at, subjects, opened));
+    }
+    Ok(Decision { drafts, ..Decision::default() })
+}
+
+/// The opening as an amendment puts it in place of the old: the batch and its holding stay.
+pub(super) fn opening(
+    it: &Deciding<'_>,
+    desk: &Desk,
+    act: &OpenBatch,
+    old: &BatchOpened,
+) -> Result<BatchOpened, Stop> {
+    it.desk.code_is_free(SubjectKind::Batch, &act.code, old.batch.0)?;
+    let body = filled(it, desk, act, old.batch, old.holding)?;
+    Ok(BatchOpened { late: old.late.clone(), ..body })
+}
+
+/// What an opening is about.
+pub(super) fn opening_subjects(body: &BatchOpened) -> Vec<Subject> {
+    let mut subjects = vec![body.batch.into(), body.vessel.into(), body.holding.into()];
+    subjects.extend(body.ingredients.iter().map(|ingredient| Subject::from(ingredient.lot)));
+    subjects.extend(body.legs.iter().map(|leg| Subject::from(leg.holding)));
+    subjects
+}
+
+fn filled(
+    it: &Deciding<'_>,
+    desk: &Desk,
+    act: &OpenBatch,
+    batch: BatchId,
+    holding: HoldingId,
+) -> Result<BatchOpened, Stop> {
+    not_ahead("/opened_at", act.opened_at, it.now)?;
+    let vessel = desk.vessel(act.vessel)?;
     if let Some((_, vessel)) = &vessel.current {
-        fits(act, vessel)?;
+        is_told_right(act, vessel)?;
     }
     known_words(act)?;
     each_lot_once(act)?;
-    let holding: HoldingId = it.id();
     let mut ingredients = Vec::new();
-    let mut subjects = vec![act.batch.into(), act.vessel.into(), holding.into()];
     let mut legs = Vec::new();
     let mut shortfalls = Vec::new();
     for draw in &act.ingredients {
-        let lot = it.desk.lot(draw.lot)?;
-        let line = line_of(it.desk, lot, draw)?;
+        let lot = desk.lot(draw.lot)?;
+        let line = line_of(desk, lot, draw)?;
         ingredients.push(ingredient(draw, &line.lot_code, &line.material_name));
         draw_legs(lot, draw, holding, &mut legs, &mut shortfalls);
-        subjects.push(draw.lot.into());
     }
     legs.push(Leg { holding, direction: Direction::In, amount: act.volume.clone() });
-    subjects.extend(legs.iter().map(|leg| Subject::from(leg.holding)));
-    let body = BatchOpened {
-        batch: act.batch,
+    Ok(BatchOpened {
+        batch,
         code: act.code.clone(),
         name: act.name.clone(),
         product_class: act.product_class.clone(),
@@ -77,42 +116,69 @@ pub(super) fn open(it: &mut Deciding<'_>, act: &OpenBatch) -> Result<Decision, S
         demand: act.demand.clone(),
         ingredients,
         shortfalls,
+        late: it.late(act.opened_at, None, None)?,
         legs,
-    };
-    let deviation = if body.shortfalls.is_empty() { None } else { Some(short_of(it, &body)?) };
-    let mut drafts = vec![it.draft(act.opened_at, subjects, body)];
-    if let Some((opened, subjects)) = deviation {
-        let at = Stamp::in_zone(it.now, &zone(it)?);
-        let opened = DeviationOpened { entry: Some(drafts[0].id), ..opened };
-        drafts.push(it.draft(at, subjects, opened));
-    }
-    Ok(Decision { drafts, ..Decision::default() })
+    })
 }
 
-/// The deviation that a batch opens when it was filled with more than the book had.
-fn short_of(
+/// What was wrong with a fill that has happened: more than the book had, more than the vessel holds, a lot that must
+/// not be used.
+fn found_at_opening(it: &Deciding<'_>, body: &BatchOpened) -> Result<Vec<Finding>, Stop> {
+    let code_of = |lot: LotId| {
+        let line = body.ingredients.iter().find(|ingredient| ingredient.lot == lot);
+        line.map_or("", |line| line.lot_code.as_str())
+    };
+    let mut found: Vec<Finding> =
+        body.shortfalls.iter().map(|short| shortfall_finding(code_of(short.lot), short)).collect();
+    if let Some((_, vessel)) = &it.desk.vessel(body.vessel)?.current
+        && body.volume.base() > vessel.capacity.base()
+    {
+        let sentence = format!(
+            "{} were filled into {}, which holds {}.",
+            body.volume, vessel.code, vessel.capacity
+        );
+        found.push(
+            Finding::new("vessel.over-capacity", Verdict::Refer, Basis::SiteSetting, sentence)
+                .param("vessel", vessel.code.as_str())
+                .cured_by("Measure the volume again, or mend the vessel's capacity in the book."),
+        );
+    }
+    for ingredient in &body.ingredients {
+        let lot = it.desk.lot(ingredient.lot)?;
+        if lot.status != LotStatus::Released || lot.is_expired(it.now) {
+            let how = if lot.status == LotStatus::Released { "expired" } else { lot.status.name() };
+            let sentence = format!("Lot {} was used although it is {how}.", ingredient.lot_code);
+            found.push(
+                Finding::new("lot.status", Verdict::Refer, Basis::SiteSetting, sentence)
+                    .param("lot", ingredient.lot_code.as_str())
+                    .cured_by("Have quality decide what becomes of the batch."),
+            );
+        }
+    }
+    Ok(found)
+}
+
+/// The deviation that a fill opens.
+fn deviation_of(
     it: &mut Deciding<'_>,
     body: &BatchOpened,
+    findings: Vec<Finding>,
 ) -> Result<(DeviationOpened, [Subject; 3]), Stop> {
     let deviation: DeviationId = it.id();
     let code = free_code(it, &body.code, 1, deviation)?;
-    let finding = |short: &Shortfall| {
-        let line = body.ingredients.iter().find(|ingredient| ingredient.lot == short.lot);
-        shortfall_finding(line.map_or("", |line| line.lot_code.as_str()), short)
-    };
     let opened = DeviationOpened {
         deviation,
         code,
-        title: format!("{} filled with more than the book had", body.code),
+        title: format!("{} filled otherwise than the book allows", body.code),
         batch: Some(body.batch),
         entry: None,
-        findings: body.shortfalls.iter().map(finding).collect(),
+        findings,
     };
     Ok((opened, [body.batch.into(), body.holding.into(), deviation.into()]))
 }
 
-/// What is filled must be liquid at most as much as the whole, and must fit into the vessel on the batch's premises.
-fn fits(act: &OpenBatch, vessel: &VesselDescribed) -> Result<(), Refusal> {
+/// What is filled must be liquid at most as much as the whole, in a vessel on the batch's premises.
+fn is_told_right(act: &OpenBatch, vessel: &VesselDescribed) -> Result<(), Refusal> {
     if vessel.premises != act.premises {
         return Err(Refusal::meaningless(
             "/vessel",
@@ -120,12 +186,6 @@ fn fits(act: &OpenBatch, vessel: &VesselDescribed) -> Result<(), Refusal> {
                 "vessel {} stands on premises {}, not {}: the law that binds follows the premises",
                 vessel.code, vessel.premises, act.premises
             ),
-        ));
-    }
-    if act.volume.base() > vessel.capacity.base() {
-        return Err(Refusal::meaningless(
-            "/volume",
-            format!("{} do not fit into {} of {}", act.volume, vessel.code, vessel.capacity),
         ));
     }
     if act.liquid.base() == 0 || act.liquid.base() > act.volume.base() {
@@ -171,7 +231,9 @@ fn expected_final(
     Ok(ExpectedFinal {
         value: value.clone(),
         scale: scale.clone(),
-        extract: format!("{:.4}", found.apparent_extract),
+        apparent_extract_percent: format!("{:.4}", found.apparent_extract),
         basis: basis.clone(),
+        method: found.method.to_owned(),
+        engine: ENGINE.to_owned(),
     })
 }

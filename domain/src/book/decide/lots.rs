@@ -7,7 +7,6 @@ use crate::book::body::{Direction, Leg, LotReceived, LotStatus, LotStatusChanged
 use crate::book::command::{Decision, Receive, Refusal, Stop, not_ahead};
 use crate::book::subject::{Subject, SubjectKind};
 use crate::ids::{HoldingId, LotId};
-use crate::stamp::Stamp;
 use crate::units::Dimension;
 
 pub(super) fn receive(it: &mut Deciding<'_>, act: &Receive) -> Result<Decision, Stop> {
@@ -55,6 +54,7 @@ pub(super) fn receipt(it: &Deciding<'_>, act: &Receive) -> Result<LotReceived, S
         document: act.document.clone(),
         composition: act.composition.clone(),
         status: act.status,
+        late: it.late(act.received_at, None, None)?,
         legs: vec![leg],
     })
 }
@@ -77,9 +77,9 @@ pub(super) fn change_status(
 ) -> Result<Decision, Stop> {
     let state = it.desk.lot(lot)?;
     if state.status == status {
-        return Ok(Decision::default());
+        return Err(Refusal::conflict(format!("the lot is {} already", status.name())).into());
     }
-    let at = Stamp::in_zone(it.now, &zone(it)?);
+    let at = it.from_now_on(lot.into())?;
     let body = LotStatusChanged { lot, status, reason: reason.to_owned() };
     let draft = it.draft(at, [Subject::from(lot)], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })

@@ -4,6 +4,7 @@ use std::collections::BTreeSet;
 
 use super::Deciding;
 use super::additions::{breach as breach_of, corrected, is_worse, span, subjects_of};
+use super::batches::{opening, opening_subjects};
 use super::lots::receipt;
 use super::readings::{checked, reading};
 use crate::book::assessing::settings_of;
@@ -152,7 +153,7 @@ pub(super) fn amend(it: &mut Deciding<'_>, act: &Amend) -> Result<Decision, Stop
     let target = it.desk.entry_in_force(act.target)?;
     if !target.body.is_amendable() {
         return Err(Refusal::conflict(format!(
-            "a {} entry stands as it is: founding, assessments, signatures, amendments and issued records are not amended",
+            "a {} entry stands as it is: founding, people, assessments, signatures, amendments and issued records are not amended",
             target.body.kind().0
         ))
         .into());
@@ -202,16 +203,12 @@ fn corrected_breach(
     Ok(is_worse(it, act, old, &new)?.then_some(new))
 }
 
-/// Who answers for what the entry says: people, settings and rule sets are the admin's, whether a lot may be used and
+/// Who answers for what the entry says: settings and rule sets are the admin's, whether a lot may be used and
 /// what became of a deviation are quality's. Everything else: the author within the shift; otherwise a lead or quality.
 fn may_amend(it: &Deciding<'_>, target: &InForce) -> Result<(), Stop> {
     match target.body.as_ref() {
-        Body::PersonEnrolled(_)
-        | Body::RoleGranted(_)
-        | Body::RoleWithdrawn(_)
-        | Body::SettingsChanged(_)
-        | Body::RulesetAdopted(_) => {
-            return Ok(it.needs(&[Role::Admin], "amend people, settings or rule sets")?);
+        Body::SettingsChanged(_) | Body::RulesetAdopted(_) => {
+            return Ok(it.needs(&[Role::Admin], "amend settings or rule sets")?);
         }
         Body::LotStatusChanged(_) | Body::DeviationOpened(_) | Body::DeviationResolved(_) => {
             return Ok(it.needs(&[Role::Quality], "amend a lot's status or a deviation")?);
@@ -244,7 +241,15 @@ fn effect(
     };
     let (occurred_at, subjects, body): (Stamp, Vec<Subject>, Body) =
         match (to, target.body.as_ref()) {
-            (AmendTo::Void, _) => return Ok((Effect::Void(VoidMark {}), Vec::new())),
+            (AmendTo::Void, _) => {
+                nothing_leans_on(it, target)?;
+                return Ok((Effect::Void(VoidMark {}), Vec::new()));
+            }
+            (AmendTo::Opening(act), Body::BatchOpened(old)) => {
+                let desk = it.desk.without(target);
+                let body = opening(it, &desk, act, old)?;
+                (act.opened_at, opening_subjects(&body), body.into())
+            }
             (AmendTo::Value(index, value), Body::ReadingTaken(old)) => {
                 return Ok((item(it, old, *index, value)?, Vec::new()));
             }
@@ -262,6 +267,9 @@ fn effect(
                         Refusal::meaningless("/lot", "the lot itself stays the same").into()
                     );
                 }
+                if act.status != old.status {
+                    it.needs(&[Role::Quality], "change whether a lot may be used")?;
+                }
                 let body = receipt(it, act)?;
                 (act.received_at, vec![act.lot.into(), body.holding.into()], body.into())
             }
@@ -270,9 +278,28 @@ fn effect(
     let replacement = Replacement {
         occurred_at,
         subjects: subjects.iter().map(|s| About { kind: s.kind, id: s.id }).collect(),
+        kv: body.kind().1,
         body: body.write().map_err(|e| Refusal::meaningless("/effect", e.to_string()))?,
     };
     Ok((Effect::Replace(replacement), subjects))
+}
+
+/// A batch or a lot that something was done with cannot be undone: what is wrong about it is corrected.
+fn nothing_leans_on(it: &Deciding<'_>, target: &InForce) -> Result<(), Stop> {
+    let subject: Subject = match target.body.as_ref() {
+        Body::BatchOpened(body) => body.batch.into(),
+        Body::LotReceived(body) => body.lot.into(),
+        _ => return Ok(()),
+    };
+    let others = it.desk.subject(subject)?.entries.iter();
+    if others.filter(|other| !other.void && other.seq != target.seq).count() == 0 {
+        return Ok(());
+    }
+    Err(Refusal::conflict(format!(
+        "other entries lean on this {}: void those first, or correct what is wrong with it",
+        subject.kind.name()
+    ))
+    .into())
 }
 
 /// One value of a reading; values that others were computed from are replaced with the whole reading.
@@ -310,7 +337,8 @@ fn item(
     let checked = checked(it, value, at)?;
     let value =
         serde_json::to_value(checked).map_err(|e| Refusal::meaningless(at, e.to_string()))?;
-    Ok(Effect::Item(ItemChange { index, value }))
+    let (_, kv) = Body::READING_TAKEN;
+    Ok(Effect::Item(ItemChange { index, kv, value }))
 }
 
 pub(super) fn issue(it: &mut Deciding<'_>, act: &Issue) -> Result<Decision, Stop> {

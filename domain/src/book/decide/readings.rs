@@ -1,7 +1,7 @@
 //! Recording what was measured. Corrections are computed here, once, and kept with their method.
 
 use super::{Deciding, ENGINE};
-use crate::book::body::readings::CorrectedGravity;
+use crate::book::body::readings::{CorrectedGravity, Temperature};
 use crate::book::body::{Nitrogen, Reading, ReadingTaken};
 use crate::book::command::{Decision, Refusal, Stop, TakeReading, not_ahead};
 use crate::book::readings::{READABLE, readable};
@@ -44,6 +44,11 @@ pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTak
         sample: act.sample.clone(),
         laboratory: act.laboratory.clone(),
         nitrogen: nitrogen(&values),
+        late: it.late(
+            act.reported_at.unwrap_or(act.taken_at),
+            act.captured_at,
+            act.note.as_ref(),
+        )?,
         values,
         note: act.note.clone(),
     })
@@ -80,31 +85,35 @@ pub(super) fn checked(it: &Deciding<'_>, value: &Reading, at: &str) -> Result<Re
         )
         .into());
     }
+    if known.name == "ammonium" && value.expressed_as.is_none() {
+        return Err(Refusal::meaningless(
+            &format!("{at}/expressed_as"),
+            "say as what the laboratory counts ammonium: NH4, NH3 or N",
+        )
+        .into());
+    }
     if let Some(instrument) = value.instrument {
         it.desk.instrument(instrument)?;
     }
     let corrected = match known.name {
-        "gravity" => Some(gravity(value, number, at)?),
+        "gravity" => gravity(value, number, at)?,
         _ => None,
     };
     Ok(Reading { corrected, ..value.clone() })
 }
 
 /// A gravity at 20 °C. Without the sample's temperature it is taken as read, and says so.
-fn gravity(value: &Reading, number: f64, at: &str) -> Result<CorrectedGravity, Refusal> {
+fn gravity(value: &Reading, number: f64, at: &str) -> Result<Option<CorrectedGravity>, Refusal> {
     let wrong = |e: crate::densimetry::DensimetryError, field: &str| {
         Refusal::meaningless(&format!("{at}/{field}"), e.to_string())
     };
     let scale = Scale::parse(&value.unit).map_err(|e| wrong(e, "unit"))?;
-    let temperature =
-        value.sample_temperature.as_deref().map(Decimal::parse).transpose().map_err(|e| {
-            Refusal::meaningless(&format!("{at}/sample_temperature"), e.to_string())
-        })?;
-    let celsius = temperature.map_or(20.0, Decimal::to_f64);
-    let found = correct(number, scale, celsius).map_err(|e| {
-        wrong(e, if temperature.is_some() { "sample_temperature" } else { "value" })
-    })?;
-    let mut method = if temperature.is_some() {
+    let celsius = value.sample_temperature.as_ref().map(|given| believed(given, at)).transpose()?;
+    let Ok(found) = correct(number, scale, celsius.unwrap_or(20.0)) else {
+        // Hotter than the sugar tables reach: kept as it was read, and not corrected.
+        return Ok(None);
+    };
+    let mut method = if celsius.is_some() {
         found.method.to_owned()
     } else {
         "taken as read: no sample temperature was given".to_owned()
@@ -113,13 +122,28 @@ fn gravity(value: &Reading, number: f64, at: &str) -> Result<CorrectedGravity, R
         method.push_str("; ");
         method.push_str(note);
     }
-    Ok(CorrectedGravity {
+    Ok(Some(CorrectedGravity {
         sg_20_20: format!("{:.5}", found.sg_20_20),
-        extract: format!("{:.4}", found.apparent_extract),
+        apparent_extract_percent: format!("{:.4}", found.apparent_extract),
         correction: format!("{:.5}", found.correction),
         method,
         engine: ENGINE.to_owned(),
-    })
+    }))
+}
+
+/// A sample's temperature in °C, if it can be one of a liquid.
+fn believed(given: &Temperature, at: &str) -> Result<f64, Refusal> {
+    let pointer = format!("{at}/sample_temperature");
+    let celsius = given
+        .celsius()
+        .ok_or_else(|| Refusal::meaningless(&pointer, "give a decimal number in Cel or [degF]"))?;
+    if (-30.0..=130.0).contains(&celsius) {
+        return Ok(celsius);
+    }
+    Err(Refusal::meaningless(
+        &pointer,
+        format!("{} {} cannot be: a sample lies between -30 and 130 °C", given.value, given.unit),
+    ))
 }
 
 /// Assimilable nitrogen, if both of its parts were found and neither is a mere bound.
@@ -137,9 +161,9 @@ fn nitrogen(values: &[Reading]) -> Option<Nitrogen> {
     };
     let yan = Yan::from_parts(ammonium, amino).ok()?;
     Some(Nitrogen {
-        ammonium: format!("{:.3}", yan.ammonium_n_mg_l),
-        amino: format!("{:.3}", yan.primary_amino_n_mg_l),
-        total: format!("{:.3}", yan.total_mg_l()),
+        ammonium_mg_l: format!("{:.3}", yan.ammonium_n_mg_l),
+        amino_mg_l: format!("{:.3}", yan.primary_amino_n_mg_l),
+        total_mg_l: format!("{:.3}", yan.total_mg_l()),
         method: "ammonium nitrogen + primary amino nitrogen; N/NH4 0.776484, N/NH3 0.822441 (IUPAC 2021 atomic masses)".to_owned(),
         engine: ENGINE.to_owned(),
     })

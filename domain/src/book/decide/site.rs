@@ -109,10 +109,12 @@ fn local(it: &Deciding<'_>) -> Result<Stamp, Stop> {
 }
 
 pub(super) fn grant(it: &mut Deciding<'_>, person: PersonId, role: Role) -> Result<Decision, Stop> {
+    it.needs(&[Role::Admin], "grant a role")?;
     if it.desk.person(person)?.roles.contains(&role) {
-        return Ok(Decision::default());
+        let what = format!("the person has the role {} already", role.name());
+        return Err(Refusal::conflict(what).into());
     }
-    let at = local(it)?;
+    let at = it.from_now_on(person.into())?;
     let draft = it.draft(at, [person.into()], RoleGranted { person, role });
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }
@@ -123,8 +125,10 @@ pub(super) fn withdraw(
     role: Role,
     reason: Option<String>,
 ) -> Result<Decision, Stop> {
+    it.needs(&[Role::Admin], "withdraw a role")?;
     if !it.desk.person(person)?.roles.contains(&role) {
-        return Ok(Decision::default());
+        let what = format!("the person has not the role {}", role.name());
+        return Err(Refusal::conflict(what).into());
     }
     if role == Role::Admin && it.command.actor == crate::ledger::entry::Actor::Person(person) {
         return Err(Refusal::conflict(
@@ -132,7 +136,7 @@ pub(super) fn withdraw(
         )
         .into());
     }
-    let at = local(it)?;
+    let at = it.from_now_on(person.into())?;
     let draft = it.draft(at, [person.into()], RoleWithdrawn { person, role, reason });
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }
@@ -145,8 +149,8 @@ pub(super) fn change_settings(
     let mut all = it.desk.site()?.settings.clone();
     all.extend(settings.iter().map(|(name, value)| (name.clone(), value.clone())));
     crate::book::assessing::settings_of(&all)?;
-    let at = local(it)?;
     let site = it.desk.site_id();
+    let at = it.from_now_on(site.into())?;
     let body = SettingsChanged { settings: settings.clone(), reason: reason.to_owned() };
     let draft = it.draft(at, [site.into()], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
@@ -177,8 +181,7 @@ where
 {
     it.desk.code_is_free(T::KIND, body.code(), body.id())?;
     let subject = Subject { kind: T::KIND, id: body.id() };
-    it.desk.subject(subject)?;
-    let at = local(it)?;
+    let at = it.from_now_on(subject)?;
     let draft = it.draft(at, [subject], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }

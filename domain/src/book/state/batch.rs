@@ -33,6 +33,8 @@ pub struct BatchState {
     pub proposals: BTreeMap<ProposalId, ProposalState>,
     /// Which addition carried out which proposal; a corrected time may lie before the proposal.
     carried_out: BTreeMap<ProposalId, u64>,
+    /// Signatures whose time lies before their proposal's, as clocks of several programs may differ.
+    signed_early: BTreeMap<ProposalId, Vec<Signed>>,
     /// When yeast first went in.
     pub pitched_at: Option<Micros>,
     /// When the last ingredient that is no nutrient, yeast or sulfite went in.
@@ -65,13 +67,16 @@ pub struct NitrogenFound {
     pub amino: f64,
 }
 
+/// A signature: when, by whom, what.
+pub type Signed = (Stamp, Actor, SignoffGiven);
+
 /// A proposal with what became of it.
 #[derive(Clone, Debug)]
 pub struct ProposalState {
     /// The entry that records it.
     pub entry: Arc<InForce>,
     /// Signatures given on it.
-    pub signoffs: Vec<(Stamp, Actor, SignoffGiven)>,
+    pub signoffs: Vec<Signed>,
     /// The addition that carried it out.
     pub done_by: Option<u64>,
 }
@@ -97,6 +102,7 @@ impl BatchState {
             additions: Vec::new(),
             proposals: BTreeMap::new(),
             carried_out: BTreeMap::new(),
+            signed_early: BTreeMap::new(),
             pitched_at: None,
             last_ingredient_at: None,
             deviations: Vec::new(),
@@ -111,15 +117,18 @@ impl BatchState {
             Body::ProposalAssessed(body) if body.batch == self.batch => {
                 let state = ProposalState {
                     entry: Arc::clone(entry),
-                    signoffs: Vec::new(),
+                    signoffs: self.signed_early.remove(&body.proposal).unwrap_or_default(),
                     done_by: self.carried_out.get(&body.proposal).copied(),
                 };
                 self.proposals.insert(body.proposal, state);
             }
             Body::SignoffGiven(body) => {
-                let signed = body.proposal.and_then(|id| self.proposals.get_mut(&id));
-                if let Some(proposal) = signed {
-                    proposal.signoffs.push((entry.occurred_at, entry.actor, body.clone()));
+                if let Some(id) = body.proposal {
+                    let signed = (entry.occurred_at, entry.actor, body.clone());
+                    match self.proposals.get_mut(&id) {
+                        Some(proposal) => proposal.signoffs.push(signed),
+                        None => self.signed_early.entry(id).or_default().push(signed),
+                    }
                 }
             }
             Body::DeviationOpened(body) if body.batch == Some(self.batch) => {
@@ -140,8 +149,9 @@ impl BatchState {
         let at = entry.occurred_at.at;
         for value in &body.values {
             if let Some(corrected) = &value.corrected
+                && value.qualifier.is_none()
                 && let (Ok(sg), Ok(extract)) =
-                    (corrected.sg_20_20.parse(), corrected.extract.parse())
+                    (corrected.sg_20_20.parse(), corrected.apparent_extract_percent.parse())
             {
                 self.gravities.push(Gravity { seq: entry.seq, at, sg, extract });
             }
@@ -153,7 +163,8 @@ impl BatchState {
             }
         }
         if let Some(found) = &body.nitrogen
-            && let (Ok(ammonium), Ok(amino)) = (found.ammonium.parse(), found.amino.parse())
+            && let (Ok(ammonium), Ok(amino)) =
+                (found.ammonium_mg_l.parse(), found.amino_mg_l.parse())
         {
             self.nitrogen.push(NitrogenFound { sampled_at: at, ammonium, amino });
         }

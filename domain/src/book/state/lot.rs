@@ -40,7 +40,10 @@ impl LotState {
     pub(crate) fn apply(&mut self, entry: &InForce) {
         match entry.body.as_ref() {
             Body::LotReceived(body) if body.lot == self.lot => {
-                self.status = body.status;
+                // Whoever changed the status since knew more than the receipt did.
+                if self.status_reason.is_none() {
+                    self.status = body.status;
+                }
                 self.received = Some((entry.occurred_at, body.clone()));
                 self.book(entry);
             }

@@ -139,7 +139,8 @@ impl NewBatch {
         faults.words("/fermentable_sugar/basis", basis);
     }
 
-    fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
+    /// What it asks of the book.
+    pub(crate) fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
         let mut faults = Faults::default();
         self.texts(&mut faults);
         let volume = faults.amount("/volume", &self.volume, Dimension::Volume);

@@ -19,7 +19,7 @@ use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
 use crate::problem::{Kind, Problem, ProblemDocument};
 use crate::resources::additions::NewAddition;
-use crate::resources::batches::no_batch;
+use crate::resources::batches::{NewBatch, no_batch};
 use crate::resources::lots::NewLot;
 use crate::resources::readings::{NewReading, NewValue};
 use crate::strict::Strict;
@@ -105,7 +105,8 @@ pub(crate) async fn of_kind(
     Ok(Json(Listed { items }))
 }
 
-/// A correction of an entry. Exactly one of `void`, `value`, `reading`, `addition` and `lot` says what it becomes.
+/// A correction of an entry. Exactly one of `void`, `value`, `reading`, `addition`, `lot` and `batch` says what it
+/// becomes.
 #[derive(Deserialize, ToSchema)]
 #[serde(deny_unknown_fields)]
 pub(crate) struct NewAmendment {
@@ -123,6 +124,8 @@ pub(crate) struct NewAmendment {
     addition: Option<NewAddition>,
     /// The receipt as it was.
     lot: Option<NewLot>,
+    /// The opening of the batch as it was.
+    batch: Option<NewBatch>,
 }
 
 /// One value of a reading.
@@ -145,9 +148,10 @@ impl NewAmendment {
             self.reading.is_some(),
             self.addition.is_some(),
             self.lot.is_some(),
+            self.batch.is_some(),
         ];
         if given.iter().filter(|given| **given).count() != 1 {
-            faults.note("", "say exactly one of void, value, reading, addition and lot");
+            faults.note("", "say exactly one of void, value, reading, addition, lot and batch");
             return faults.finish(None);
         }
         if let Some(lot) = self.lot {
@@ -159,8 +163,11 @@ impl NewAmendment {
             let receipt = lot.read(&mut faults, id, house.now());
             return faults.finish(receipt.map(|receipt| AmendTo::Receipt(Box::new(receipt))));
         }
-        let now = house.now();
         let batch = batch_of(target);
+        if let Some(opening) = self.batch {
+            return Ok(AmendTo::Opening(Box::new(opening.read(house, batch)?)));
+        }
+        let now = house.now();
         let to = match (self.value, self.reading, self.addition) {
             (Some(value), ..) => {
                 let read = value.value.read(&mut faults, "/value/value");
@@ -186,6 +193,7 @@ fn batch_of(target: &InForce) -> BatchId {
     match target.body.as_ref() {
         Body::ReadingTaken(body) => body.batch,
         Body::AdditionRecorded(body) => body.batch,
+        Body::BatchOpened(body) => body.batch,
         _ => BatchId(Uuid::nil()),
     }
 }

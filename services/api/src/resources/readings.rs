@@ -3,6 +3,7 @@
 use axum::Json;
 use axum::extract::{Path, State};
 use axum::http::StatusCode;
+use domain::book::body::readings::Temperature;
 use domain::book::body::{Body, Reading};
 use domain::book::command::{Act, TakeReading};
 use domain::ids::BatchId;
@@ -12,7 +13,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 use uuid::Uuid;
 
-use crate::amounts::{Faults, stated_time};
+use crate::amounts::{Amount, Faults, stated_time};
 use crate::asking::{asked, print};
 use crate::caller::Caller;
 use crate::idempotency::IdempotencyKey;
@@ -65,9 +66,8 @@ pub(crate) struct NewValue {
     qualifier: Option<String>,
     /// For ammonium: `NH4`, `NH3` or `N`.
     expressed_as: Option<String>,
-    /// Temperature of the sample in °C, decimal text: a gravity is corrected with it.
-    #[schema(example = "27.0")]
-    sample_temperature: Option<String>,
+    /// Temperature of the sample, `Cel` or `[degF]`: a gravity is corrected with it.
+    sample_temperature: Option<Amount>,
     /// How it was measured.
     #[schema(min_length = 1, max_length = 200)]
     method: Option<String>,
@@ -91,7 +91,9 @@ impl NewValue {
             qualifier: self.qualifier,
             unit: self.unit,
             expressed_as: self.expressed_as,
-            sample_temperature: self.sample_temperature,
+            sample_temperature: self
+                .sample_temperature
+                .map(|given| Temperature { value: given.value, unit: given.unit }),
             method: self.method,
             instrument: self.instrument.map(Into::into),
             corrected: None,

@@ -39,7 +39,11 @@ impl Evidence {
             findings: findings(&body.assessment),
             signatures: body.proposal.map(|id| self.signatures(id)).unwrap_or_default(),
             already_done: body.already_done.clone(),
-            late: if body.late { self.late_text(entered, done, "the act") } else { String::new() },
+            late: if body.late.is_some() {
+                self.late_text(entered, done, "the act")
+            } else {
+                String::new()
+            },
             proposal: behind.map(|(proposal, it)| self.compared(proposal, it, body)),
             outcome: told.fate().unwrap_or_default().to_owned(),
             struck: struck(self, &told.read, said),

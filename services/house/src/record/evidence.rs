@@ -18,7 +18,6 @@ use domain::ledger::entry::{Actor, Entry};
 use domain::ledger::note::Checkpoint;
 use domain::ledger::tree::Hash;
 use domain::rules::RuleSet;
-use domain::settings::{Setting, Settings};
 use domain::stamp::{Micros, Stamp};
 use store::log::Stored;
 use store::sites::Site;
@@ -80,7 +79,6 @@ impl Told {
 /// See the module.
 #[derive(Debug)]
 pub(crate) struct Evidence {
-    pub(crate) site: Site,
     pub(crate) founded: SiteFounded,
     pub(crate) batch: BatchId,
     pub(crate) n: u64,
@@ -136,7 +134,6 @@ impl House {
         let rule_sets = rule_sets(conn, &site, &desk, &told).await?;
         let drawn_up = originals.last().map_or(Micros(0), |last| last.entry.recorded_at);
         Ok(Evidence {
-            site,
             founded,
             batch,
             n,
@@ -206,16 +203,6 @@ impl Evidence {
         let until = loaded.entries.iter().filter(|entry| entry.seq < before_seq);
         let State::Person(state) = State::fold(subject, until) else { return String::new() };
         state.roles.iter().map(|role| role.name()).collect::<Vec<_>>().join(", ")
-    }
-
-    /// After which time an entry counted as late when that one was written, in microseconds.
-    pub(crate) fn late_after(&self, before_seq: u64) -> i64 {
-        let subject = Subject::from(self.site.id);
-        let entries = self.desk.loaded(&subject).map(|loaded| loaded.entries.as_slice());
-        let until = entries.unwrap_or_default().iter().filter(|entry| entry.seq < before_seq);
-        let State::Site(state) = State::fold(subject, until) else { return i64::MAX };
-        let settings = Settings::with(&state.settings).unwrap_or_default();
-        settings.micros(Setting::LateEntryHours).unwrap_or(i64::MAX)
     }
 
     /// Whether an amendment voided what it amends.

@@ -60,7 +60,10 @@ impl Evidence {
                 String::new,
                 |end| {
                     let value = words::on_scale(&end.value, &end.scale);
-                    format!("{value} (apparent extract {} % by mass), {}", end.extract, end.basis)
+                    format!(
+                        "{value} (apparent extract {} % by mass), {}",
+                        end.apparent_extract_percent, end.basis
+                    )
                 },
             ),
             fermentable_sugar: self.sugar(opened),
@@ -273,7 +276,10 @@ fn points(body: &ReadingTaken, hours: f32) -> Vec<ChartPoint> {
     let liquid = body.values.iter().find(|value| value.quantity == "temperature");
     let point = |value: &Reading| {
         let gravity = value.corrected.as_ref()?.sg_20_20.parse().ok()?;
-        let sample = value.sample_temperature.as_ref().and_then(|text| text.parse().ok());
+        let sample = value
+            .sample_temperature
+            .as_ref()
+            .and_then(|given| format!("{:.1}", given.celsius()?).parse().ok());
         Some(ChartPoint { hours, gravity, temperature: liquid.and_then(celsius).or(sample) })
     };
     body.values.iter().filter_map(point).collect()

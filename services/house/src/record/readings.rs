@@ -94,8 +94,7 @@ impl Evidence {
         let due = body.reported_at.map_or(told.read.occurred_at.at, |at| at.at);
         let event = if body.reported_at.is_some() { "the answer" } else { "the reading" };
         let entered = entered_at(told);
-        let late = entered.0 - due.0 > self.late_after(told.read.seq);
-        if late { self.late_text(entered, due, event) } else { String::new() }
+        if body.late.is_some() { self.late_text(entered, due, event) } else { String::new() }
     }
 
     /// `entered 2025-09-24 09:05, 6 h 25 min after the act`.
@@ -121,9 +120,9 @@ impl Evidence {
         Some(AccountRow {
             at: self.clock(told.read.occurred_at.at),
             what: format!("measured (entry {}), {by}: the account begins anew here", told.n),
-            ammonium_n: tenth(&found.ammonium),
-            amino_n: tenth(&found.amino),
-            supply: tenth(&found.total),
+            ammonium_n: tenth(&found.ammonium_mg_l),
+            amino_n: tenth(&found.amino_mg_l),
+            supply: tenth(&found.total_mg_l),
             need: String::new(),
         })
     }
@@ -223,7 +222,7 @@ fn method(value: &Reading, n: u64, seen: &mut Seen) -> String {
 
 fn remark(body: &ReadingTaken) -> String {
     let nitrogen = body.nitrogen.as_ref().map(|found| {
-        format!("assimilable nitrogen {} mg N/L: {}", tenth(&found.total), found.method)
+        format!("assimilable nitrogen {} mg N/L: {}", tenth(&found.total_mg_l), found.method)
     });
     [body.note.clone(), nitrogen].into_iter().flatten().collect::<Vec<_>>().join("; ")
 }

@@ -126,7 +126,8 @@ pub(crate) fn entered(reading: &Reading) -> String {
         text = format!("{text} {unit}");
     }
     match &reading.sample_temperature {
-        Some(celsius) => format!("{text} at {celsius} °C"),
+        Some(given) if given.unit == "[degF]" => format!("{text} at {} °F", given.value),
+        Some(given) => format!("{text} at {} °C", given.value),
         None => text,
     }
 }

@@ -1,9 +1,8 @@
 //! The last head this instance signed for each log, kept outside the database.
 //!
 //! A database put back from an old backup, or forked by a second instance, would sign a history that contradicts one
-//! already handed out. The program therefore asks [`LastSigned::check`] when it opens, the writer [`LastSigned::last`]
-//! before it signs, and after the commit it tells [`LastSigned::store`] what it signed; a commit that failed leaves no
-//! trace here. A log is known by its origin, the name under which its heads are signed, not by what a database says of
+//! already handed out. The writer therefore asks [`LastSigned::last`] and compares before it signs, and after the
+//! commit tells [`LastSigned::store`] what it signed; a commit that failed leaves no trace here. A log is known by its origin, the name under which its heads are signed, not by what a database says of
 //! its sites. Each file is read once; then its record is remembered.
 //!
 //! One record of 86 bytes per log, written in place by one `pwrite` and **not** synced: an fsync for each commit
@@ -23,33 +22,9 @@ use domain::ledger::tree::{Hash, TreeHead};
 /// Twenty digits, a blank, 64 hexadecimal digits, a line feed.
 const RECORD: usize = 86;
 
-/// Why a head must not be signed.
+/// Why what was signed last is not known.
 #[derive(Debug, thiserror::Error)]
 pub enum LastSignedError {
-    /// The log is shorter than one that was signed before.
-    #[error(
-        "{origin}: this instance already signed {signed} entries, but the database holds {offered}: \
-         it was put back from an older state; bring back the newer one"
-    )]
-    Behind {
-        /// The log's name.
-        origin: String,
-        /// The size signed before.
-        signed: u64,
-        /// The size now.
-        offered: u64,
-    },
-    /// The log does not continue the one that was signed before.
-    #[error(
-        "{origin}: the log does not continue the {signed} entries this instance signed: \
-         it was changed or forked; compare with the last head that left the house"
-    )]
-    Forked {
-        /// The log's name.
-        origin: String,
-        /// The size signed before.
-        signed: u64,
-    },
     /// The record on disk is not one of ours.
     #[error("{path} is damaged: compare the log with the last head that left the house, then remove the file",
         path = .0.display())]
@@ -84,36 +59,6 @@ impl LastSigned {
         self.with(origin, |known| Ok(known.head))
     }
 
-    /// Whether `head` may be signed: not shorter than the last, the same root at the same size, and if longer,
-    /// `is_consistent` must say that the log still holds the old head as its beginning.
-    ///
-    /// # Errors
-    /// [`LastSignedError::Behind`], [`LastSignedError::Forked`], or that the record cannot be read.
-    pub fn check(
-        &self,
-        origin: &str,
-        head: TreeHead,
-        is_consistent: impl FnOnce(&TreeHead) -> bool,
-    ) -> Result<(), LastSignedError> {
-        let Some(old) = self.last(origin)? else {
-            return Ok(());
-        };
-        if head.size < old.size {
-            return Err(LastSignedError::Behind {
-                origin: origin.to_owned(),
-                signed: old.size,
-                offered: head.size,
-            });
-        }
-        let continues =
-            if head.size == old.size { head.root == old.root } else { is_consistent(&old) };
-        if continues {
-            Ok(())
-        } else {
-            Err(LastSignedError::Forked { origin: origin.to_owned(), signed: old.size })
-        }
-    }
-
     /// Remembers `head` as the last one signed.
     ///
     /// # Errors
@@ -125,20 +70,6 @@ impl LastSigned {
             known.head = Some(head);
             Ok(())
         })
-    }
-
-    /// [`LastSigned::check`] and, if it agrees, [`LastSigned::store`]: for heads of what is already committed.
-    ///
-    /// # Errors
-    /// Those of both.
-    pub fn check_and_store(
-        &self,
-        origin: &str,
-        head: TreeHead,
-        is_consistent: impl FnOnce(&TreeHead) -> bool,
-    ) -> Result<(), LastSignedError> {
-        self.check(origin, head, is_consistent)?;
-        self.store(origin, head)
     }
 
     fn path(&self, origin: &str) -> PathBuf {
@@ -215,39 +146,16 @@ mod tests {
     }
 
     #[test]
-    fn a_longer_log_that_holds_the_old_head_is_accepted_and_remembered_over_a_restart() {
+    fn what_was_signed_last_is_remembered_over_a_restart() {
         let home = tempfile::tempdir().unwrap();
         let memory = LastSigned::in_directory(home.path().to_owned());
         assert_eq!(memory.last(LOG).unwrap(), None);
-        memory.check_and_store(LOG, head(1, 1), |_| unreachable!("nothing was signed")).unwrap();
-        memory.check_and_store(LOG, head(9, 2), |old| *old == head(1, 1)).unwrap();
+        memory.store(LOG, head(1, 1)).unwrap();
+        memory.store(LOG, head(9, 2)).unwrap();
+        assert_eq!(memory.last(LOG).unwrap(), Some(head(9, 2)));
         let restarted = LastSigned::in_directory(home.path().to_owned());
         assert_eq!(restarted.last(LOG).unwrap(), Some(head(9, 2)));
         assert_eq!(restarted.last("other.example/book").unwrap(), None);
-    }
-
-    #[test]
-    fn a_stale_restore_and_a_fork_are_refused_and_change_nothing() {
-        let home = tempfile::tempdir().unwrap();
-        let memory = LastSigned::in_directory(home.path().to_owned());
-        memory.store(LOG, head(9, 2)).unwrap();
-        let stale = memory.check_and_store(LOG, head(8, 1), |_| true);
-        assert!(matches!(stale, Err(LastSignedError::Behind { signed: 9, offered: 8, .. })));
-        let other_root = memory.check_and_store(LOG, head(9, 3), |_| true);
-        assert!(matches!(other_root, Err(LastSignedError::Forked { signed: 9, .. })));
-        let other_past = memory.check_and_store(LOG, head(10, 3), |_| false);
-        assert!(matches!(other_past, Err(LastSignedError::Forked { signed: 9, .. })));
-        assert_eq!(memory.last(LOG).unwrap(), Some(head(9, 2)));
-        memory.check_and_store(LOG, head(9, 2), |_| false).unwrap();
-    }
-
-    #[test]
-    fn a_check_alone_remembers_nothing_so_a_failed_commit_leaves_no_trace() {
-        let home = tempfile::tempdir().unwrap();
-        let memory = LastSigned::in_directory(home.path().to_owned());
-        memory.store(LOG, head(1, 1)).unwrap();
-        memory.check(LOG, head(2, 2), |_| true).unwrap();
-        assert_eq!(memory.last(LOG).unwrap(), Some(head(1, 1)));
     }
 
     #[test]

@@ -3,6 +3,7 @@
 use std::path::Path;
 use std::process::Command as Program;
 
+use domain::book::body::readings::Temperature;
 use domain::book::body::{
     Component, InstrumentDescribed, LotStatus, MaterialDescribed, PartyDescribed, Premises,
     Preparation, Reading, Standing, VesselDescribed,
@@ -291,7 +292,8 @@ impl Book {
             qualifier: None,
             unit: "sg_20_20".to_owned(),
             expressed_as: None,
-            sample_temperature: celsius.map(str::to_owned),
+            sample_temperature: celsius
+                .map(|value| Temperature { value: value.to_owned(), unit: "Cel".to_owned() }),
             method: Some("hydrometer, 20 °C scale".to_owned()),
             instrument: Some(cellar.hydrometer),
             corrected: None,

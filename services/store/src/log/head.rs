@@ -1,6 +1,6 @@
 //! How far a log has come: its head as it is now, and the heads that left the house.
 
-use domain::ledger::tree::{Frontier, Hash};
+use domain::ledger::tree::{Frontier, Hash, TreeHead};
 use domain::stamp::Micros;
 
 use super::{hash, signed, unsigned};
@@ -19,6 +19,13 @@ pub struct Head {
     pub note: String,
     /// When the last entry was recorded; after a correction of the clock, what the clock said then.
     pub last_recorded_at: Micros,
+}
+
+impl Head {
+    /// Size and root as stored.
+    pub fn tree_head(&self) -> TreeHead {
+        TreeHead { size: self.frontier.size(), root: self.root }
+    }
 }
 
 /// A head that left the house.

@@ -66,7 +66,7 @@ pub(super) struct Book {
     pub(super) site: Site,
     pub(super) writers: Writers,
     pub(super) clock: Arc<AtomicI64>,
-    pub(super) committed: Arc<Mutex<Vec<TreeHead>>>,
+    pub(super) committed: Arc<Mutex<Vec<u64>>>,
     /// How many ids to draw until one draw fails with a panic; negative: never.
     pub(super) fuse: Arc<AtomicI64>,
     next: AtomicU64,
@@ -140,8 +140,12 @@ impl Book {
     }
 
     pub(super) async fn size(&self) -> u64 {
+        self.head().await.size
+    }
+
+    pub(super) async fn head(&self) -> TreeHead {
         let mut held = self.db.reader().await.unwrap();
-        crate::log::head(&mut held.conn(), self.site.number).await.unwrap().frontier.size()
+        crate::log::head(&mut held.conn(), self.site.number).await.unwrap().tree_head()
     }
 
     /// The whole log verifies and every table equals a fresh replay.
@@ -172,12 +176,11 @@ pub(super) fn public_key() -> String {
 pub(super) fn tools(
     series: u64,
     clock: &Arc<AtomicI64>,
-    committed: &Arc<Mutex<Vec<TreeHead>>>,
+    committed: &Arc<Mutex<Vec<u64>>>,
     fuse: &Arc<AtomicI64>,
 ) -> Tools {
     let (clock, committed, fuse) = (Arc::clone(clock), Arc::clone(committed), Arc::clone(fuse));
     let drawn = AtomicU64::new(series << 32);
-    let signed = Arc::clone(&committed);
     Tools {
         clock: Arc::new(move || Micros(clock.load(Ordering::Relaxed))),
         draw: Arc::new(move || {
@@ -185,11 +188,11 @@ pub(super) fn tools(
             let number = drawn.fetch_add(1, Ordering::Relaxed);
             Uuid::from_slice(&Hash::of(&number.to_be_bytes()).0[..16]).unwrap()
         }),
-        signed_last: Arc::new(move |_| Ok(signed.lock().unwrap().last().copied())),
         sign: Arc::new(|origin, size, root| {
             let checkpoint = Checkpoint { origin: origin.to_owned(), size, root: *root };
             checkpoint.sign(&key()).map_err(|error| error.to_string())
         }),
-        committed: Arc::new(move |_, head| committed.lock().unwrap().push(*head)),
+        committed: Arc::new(move |_, head| committed.lock().unwrap().push(head.size)),
+        remembered: Arc::new(|_| Ok(None)),
     }
 }

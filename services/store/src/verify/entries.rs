@@ -1,6 +1,6 @@
 //! What can be checked about an entry by itself, on all processors at once.
 
-use domain::ledger::entry::{ENVELOPE, Entry, MAX_SUBJECTS};
+use domain::ledger::entry::{ENVELOPE, Envelope, MAX_SUBJECTS};
 use domain::ledger::tree::leaf_hash;
 use domain::units::Quantity;
 use serde_json::Value;
@@ -15,7 +15,7 @@ const SHARE: usize = 500;
 /// An entry that is good by itself.
 pub(super) struct Checked {
     pub(super) stored: Stored,
-    pub(super) entry: Entry,
+    pub(super) entry: Envelope,
 }
 
 /// Checks a page of entries, in order.
@@ -41,7 +41,7 @@ pub(super) async fn read_all(page: Vec<Stored>) -> Vec<Result<Checked, Fault>> {
 
 fn read(stored: Stored) -> Result<Checked, Fault> {
     let seq = stored.seq;
-    let entry = Entry::verify_bytes(&stored.bytes).map_err(|e| Fault::at(seq, chain(&e)))?;
+    let entry = Envelope::verify_bytes(&stored.bytes).map_err(|e| Fault::at(seq, chain(&e)))?;
     if leaf_hash(&stored.bytes) != stored.leaf_hash {
         return Err(Fault::at(seq, "its leaf hash is not that of its bytes"));
     }
@@ -51,7 +51,7 @@ fn read(stored: Stored) -> Result<Checked, Fault> {
     if entry.subjects.is_empty() || entry.subjects.len() > MAX_SUBJECTS {
         return Err(Fault::at(seq, format!("it has {} subjects", entry.subjects.len())));
     }
-    if !entry.subjects.is_sorted_by(|a, b| a.subject() < b.subject()) {
+    if !entry.subjects.is_sorted_by(|a, b| (&a.kind, a.id) < (&b.kind, b.id)) {
         return Err(Fault::at(seq, "its subjects are not in order"));
     }
     if let Some(amount) = wrong_amount(&entry.body) {

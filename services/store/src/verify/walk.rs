@@ -2,13 +2,13 @@
 
 use std::collections::{BTreeMap, HashMap};
 
-use domain::book::subject::Subject;
 use domain::ids::SiteId;
-use domain::ledger::entry::Entry;
+use domain::ledger::entry::Envelope;
 use domain::ledger::note::{Checkpoint, VerifierKey};
 use domain::ledger::tiles::{Edge, Tile};
 use domain::ledger::tree::Hash;
 use domain::stamp::Micros;
+use uuid::Uuid;
 
 use super::Fault;
 use super::entries::Checked;
@@ -24,7 +24,7 @@ pub(super) struct Walk {
     pub(super) key: Option<VerifierKey>,
     /// Documents that entries name, and the first entry to do so.
     pub(super) documents: BTreeMap<Hash, u64>,
-    counters: HashMap<Subject, u64>,
+    counters: HashMap<(String, Uuid), u64>,
     last_recorded_at: Micros,
     kept: BTreeMap<u64, KeptHead>,
 }
@@ -112,20 +112,23 @@ impl Walk {
         }
     }
 
-    fn count(&mut self, entry: &Entry) -> Result<(), Fault> {
-        for numbered in &entry.subjects {
-            let counter = self.counters.entry(numbered.subject()).or_default();
+    fn count(&mut self, entry: &Envelope) -> Result<(), Fault> {
+        for subject in &entry.subjects {
+            let counter = self.counters.entry((subject.kind.clone(), subject.id)).or_default();
             *counter += 1;
-            if numbered.n != *counter {
-                let (subject, n) = (numbered.subject(), *counter);
-                let what = format!("it is number {} about {subject}, but {n} is due", numbered.n);
+            if subject.n != *counter {
+                let n = *counter;
+                let what = format!(
+                    "it is number {} about {} {}, but {n} is due",
+                    subject.n, subject.kind, subject.id
+                );
                 return Err(Fault::at(entry.seq, what));
             }
         }
         Ok(())
     }
 
-    fn note_key(&mut self, entry: &Entry) -> Result<(), Fault> {
+    fn note_key(&mut self, entry: &Envelope) -> Result<(), Fault> {
         if entry.seq != 0 {
             return Ok(());
         }
@@ -144,7 +147,7 @@ impl Walk {
         Ok(())
     }
 
-    fn note_documents(&mut self, entry: &Entry) {
+    fn note_documents(&mut self, entry: &Envelope) {
         let members: &[&str] = match entry.kind.as_str() {
             "ruleset.adopted" => &["digest"],
             "record.issued" => &["pdf", "json"],
@@ -184,7 +187,7 @@ impl Walk {
 }
 
 /// What a correction of the clock says: later entries may be recorded from then on, earlier than those before.
-fn corrected_clock(entry: &Entry) -> Result<Option<Micros>, Fault> {
+fn corrected_clock(entry: &Envelope) -> Result<Option<Micros>, Fault> {
     if entry.kind != "clock.corrected" {
         return Ok(None);
     }

@@ -13,12 +13,12 @@ use domain::stamp::Micros;
 
 use super::drawn::Drawn;
 use super::sheet::Sheet;
-use super::{Answer, Receipt, Tools, WriteError, clock, continuity};
+use super::{Answer, Receipt, Tools, WriteError, clock, continuing};
 use crate::error::chain;
 use crate::read;
 use crate::sites::Site;
 use crate::snapshots::Published;
-use crate::{Conn, StoreError, commands, directory, log};
+use crate::{Conn, StoreError, commands, directory, log, tiles};
 
 /// How often one command may ask for more before its decision counts as failed.
 const ROUNDS: usize = 64;
@@ -31,6 +31,8 @@ pub(super) struct Bench {
     /// Between groups nothing lies here but rule sets, which never change.
     desk: Desk,
     edge: Edge,
+    /// The head that the latest group left: a log that still stands there needs no comparing with what was signed.
+    left: Option<TreeHead>,
     /// Subjects of earlier groups, and in which they were last needed. Good only if the locked counter agrees.
     shelf: HashMap<Subject, (Arc<Loaded>, u64)>,
     /// What the latest group had on the desk.
@@ -53,6 +55,7 @@ impl Bench {
             site,
             desk,
             edge: Edge::default(),
+            left: None,
             shelf: HashMap::new(),
             touched: HashSet::new(),
             group: 0,
@@ -68,7 +71,12 @@ impl Bench {
     ) -> Result<Done, WriteError> {
         self.group += 1;
         let head = log::lock_head(conn, self.site.number).await?;
-        continuity::follow(conn, &self.site, &mut self.edge, &head, tools).await?;
+        let stands = head.tree_head();
+        if self.left != Some(stands) {
+            let remembered = continuing::remembered(tools, &self.site)?;
+            continuing::check(conn, &self.site, remembered, &stands).await?;
+        }
+        tiles::catch_up(conn, self.site.number, &mut self.edge, &head).await?;
         let mut sheet = Sheet::new(head);
         let ids: Vec<_> = commands.iter().map(|command| command.id).collect();
         let earlier = commands::find(conn, self.site.number, &ids).await?;
@@ -88,6 +96,7 @@ impl Bench {
             0 => None,
             _ => Some(sheet.write(conn, &self.site, &mut self.edge, tools).await?),
         };
+        self.left = Some(head.unwrap_or(stands));
         let entries = sheet.len();
         self.tidy(sheet.subjects);
         Ok(Done { answers, head, entries })

@@ -51,7 +51,7 @@ fn opening(events: &mut Events) {
     });
     events.at("2025-09-22T10:02:00-07:00", |stage| {
         let body = json!({"taken_at": "2025-09-22T10:00:00-07:00", "values": [
-            {"quantity": "gravity", "value": "1.0665", "unit": "sg_20_20", "sample_temperature": "27.0",
+            {"quantity": "gravity", "value": "1.0665", "unit": "sg_20_20", "sample_temperature": {"value": "27.0", "unit": "Cel"},
              "instrument": stage.id("HY-1")?},
             {"quantity": "temperature", "value": "28.5", "unit": "Cel", "method": "vessel thermometer"}]});
         let path = format!("/v1/batches/{}/readings", stage.id(BATCH_A)?);
@@ -129,7 +129,7 @@ fn night(events: &mut Events) {
 fn swapped_digits(events: &mut Events) {
     events.at("2025-09-24T18:05:00-07:00", |stage| {
         let body = json!({"taken_at": "2025-09-24T18:00:00-07:00", "values": [
-            {"quantity": "gravity", "value": "1.0820", "unit": "sg_20_20", "sample_temperature": "20.0",
+            {"quantity": "gravity", "value": "1.0820", "unit": "sg_20_20", "sample_temperature": {"value": "20.0", "unit": "Cel"},
              "instrument": stage.id("HY-1")?},
             {"quantity": "temperature", "value": "31.5", "unit": "Cel", "method": "vessel thermometer"}]});
         let path = format!("/v1/batches/{}/readings", stage.id(BATCH_A)?);
@@ -140,7 +140,7 @@ fn swapped_digits(events: &mut Events) {
     });
     events.at("2025-09-24T18:48:00-07:00", |stage| {
         let body = json!({"reason": "slip shows 1.0280", "value": {"index": 0, "value":
-            {"quantity": "gravity", "value": "1.0280", "unit": "sg_20_20", "sample_temperature": "20.0",
+            {"quantity": "gravity", "value": "1.0280", "unit": "sg_20_20", "sample_temperature": {"value": "20.0", "unit": "Cel"},
              "instrument": stage.id("HY-1")?}}});
         let path = format!("/v1/entries/{}/amendments", stage.id("swapped")?);
         stage.as_("ana")?.post(&path, &body)?;

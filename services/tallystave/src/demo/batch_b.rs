@@ -65,7 +65,7 @@ fn opening(events: &mut Events) {
         });
         let answer =
             stage.as_("ana")?.post(&format!("/v1/batches/{}/readings", stage.id(BATCH_B)?), &body)?;
-        let total = &answer["entries"][0]["body"]["nitrogen"]["total"];
+        let total = &answer["entries"][0]["body"]["nitrogen"]["total_mg_l"];
         stage.say(&format!("2025-09-09 08:00  {BATCH_B}  laboratory: assimilable nitrogen {} mg N/L", total.as_str().unwrap_or_default()));
         Ok(())
     });

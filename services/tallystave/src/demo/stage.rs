@@ -130,7 +130,7 @@ impl Stage {
         celsius: &str,
     ) -> anyhow::Result<()> {
         let body = json!({"taken_at": at, "values": [
-            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": "20.0",
+            {"quantity": "gravity", "value": sg, "unit": "sg_20_20", "sample_temperature": {"value": "20.0", "unit": "Cel"},
              "instrument": self.id("HY-1")?},
             {"quantity": "temperature", "value": celsius, "unit": "Cel", "method": "vessel thermometer"},
         ]});
