@@ -62,7 +62,7 @@ async fn every_alteration_of_the_log_is_found() {
             ),
         };
         for (alter, told) in [
-            (format!("update entry set bytes = {brace} where seq = 4"), "entry 4: its leaf hash"),
+            (format!("update entry set bytes = {brace} where seq = 8"), "entry 8: its leaf hash"),
             (
                 format!("update entry set leaf_hash = {zeros} where seq = 5"),
                 "entry 5: its leaf hash",
