@@ -208,6 +208,8 @@ on_both_engines! {
                 &cellar.proposal(&[(&lot, "1", "g")]), "/purpose", json!("")),
             (&cellar.ana, &*format!("/v1/entries/{entry}/amendments"), &amended, "/reason", json!("")),
             (&cellar.ana, &*format!("/v1/entries/{entry}/amendments"), &amended, "/lot/code", code),
+            (&cellar.ana, &*format!("/v1/entries/{entry}/amendments"),
+                &json!({"reason": "typed wrongly", "batch": opening}), "/batch/claims", many(50)),
             (&cellar.caro, &*format!("/v1/batches/{batch}/record"), &json!({"to": "x"}), "/to", name),
             (&cellar.caro, &*format!("/v1/rule-sets/{}/adoptions", set["id"].as_str().unwrap()),
                 &json!({"standing": "market", "market": "EU", "digest": set["digest"],

@@ -56,7 +56,7 @@ on_both_engines! {
         };
         let answers: Vec<Answer> = thread::scope(|scope| {
             let asked = [scope.spawn(ask("EXW")), scope.spawn(ask("EXY"))];
-            asked.into_iter().map(|thread| thread.join().unwrap()).collect()
+            asked.into_iter().map(|thread| thread.join().expect("an answer")).collect()
         });
         let (founded, refused): (Vec<_>, Vec<_>) =
             answers.into_iter().partition(|answer| answer.status == 201);
@@ -73,7 +73,7 @@ on_both_engines! {
         let (program, nobody, token) = unfounded(engine);
         let change = |at: &str, to: Value| {
             let mut body = founding(&token, "EXW", false);
-            *body.pointer_mut(at).unwrap() = to;
+            *body.pointer_mut(at).expect("a member") = to;
             body
         };
         for (at, to) in [

@@ -167,14 +167,14 @@ impl House {
                 None => Ok(Place::Taken("a site with this code has been founded already".into())),
             };
         }
-        Ok(match is_same {
-            true => Place::BrokenOff(site),
-            false => Place::Taken(format!(
-                "the founding of a site with this code broke off: take it up again with its origin, {}, or \
-                 choose another code and an origin of its own",
-                site.origin
-            )),
-        })
+        if is_same {
+            return Ok(Place::BrokenOff(site));
+        }
+        Ok(Place::Taken(format!(
+            "the founding of a site with this code broke off: take it up again with its origin, {}, or choose \
+             another code and an origin of its own",
+            site.origin
+        )))
     }
 
     /// Refuses unless the token is the one that waits to be used.

@@ -21,7 +21,7 @@ use crate::clock::Clock;
 use crate::error::HouseError;
 use crate::ids::Ids;
 use crate::passwords::Passwords;
-use crate::secrets::{Secrets, SignedHead};
+use crate::secrets::Secrets;
 use crate::tokens::Tokens;
 
 /// Everything the use cases share. Clones are the same house.
@@ -303,22 +303,12 @@ fn tools(secrets: &Arc<Secrets>, clock: &Clock) -> Result<Tools, HouseError> {
             checkpoint.sign(key.log_key()).map_err(|e| e.to_string())
         }),
         committed: Arc::new(move |origin: &str, head: &TreeHead| {
-            let signed = SignedHead { size: head.size, root: *head.root.as_bytes() };
-            if let Err(error) = last.store(log_of(origin), signed) {
+            if let Err(error) = last.store(origin, *head) {
                 tracing::error!(%error, origin, "the head could not be remembered beside the key");
             }
         }),
         remembered: Arc::new(move |origin: &str| {
-            let signed = memory.last(log_of(origin)).map_err(|e| e.to_string())?;
-            Ok(signed.map(|head| TreeHead { size: head.size, root: Hash(head.root) }))
+            memory.last(origin).map_err(|error| error.to_string())
         }),
     })
-}
-
-/// The memory of signed heads is kept by the log's name, not by what a database says its site is.
-fn log_of(origin: &str) -> SiteId {
-    let digest = <sha2::Sha256 as sha2::Digest>::digest(origin.as_bytes());
-    let mut bytes = [0; 16];
-    bytes.copy_from_slice(&digest[..16]);
-    SiteId(uuid::Builder::from_custom_bytes(bytes).into_uuid())
 }

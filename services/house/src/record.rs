@@ -21,7 +21,7 @@ use domain::stamp::Stamp;
 use records::BatchRecord;
 use serde_json::Value;
 use store::blobs;
-use store::log::{self, KeptHead};
+use store::log;
 use store::sites::Site;
 use store::writer::Receipt;
 
@@ -87,7 +87,8 @@ impl House {
         draw(self.evidence(site, batch, as_of_n).await?, None).await
     }
 
-    /// Draws a batch's record, writes into the book that it was handed out, and keeps its documents and its head.
+    /// Draws a batch's record, writes into the book that it was handed out, and keeps its documents and its head in the
+    /// same transaction.
     /// Sent again with the same key it gives the first answer.
     ///
     /// # Errors
@@ -109,7 +110,7 @@ impl House {
             let caller = caller.clone();
             let asked = Asked { caller, key, print, expects: None, act: Act::Issue(act) };
             match self.submit(asked).await {
-                Ok(receipt) => return self.issued(&site, receipt).await,
+                Ok(receipt) => return issued(receipt),
                 Err(HouseError::Refused(refusal))
                     if refusal.kind == RefusalKind::Conflict
                         && round < ROUNDS
@@ -151,20 +152,6 @@ impl House {
             issued_at,
             documents,
         })
-    }
-
-    /// The answer to an issue, the first one or a repeat, with its head kept.
-    async fn issued(&self, site: &Site, receipt: Receipt) -> Result<Issued, HouseError> {
-        let entry = receipt.entries.first();
-        let body = entry.map(|entry| issue_of(&entry.kind, entry.kv, &entry.body)).transpose()?;
-        let RecordIssued { log_size, pdf, json, .. } =
-            body.flatten().ok_or_else(|| HouseError::Failed("nothing was issued".to_owned()))?;
-        let mut tx = self.inner.db.begin().await?;
-        let head = self.head_at(&mut tx.conn(), site, log_size).await?;
-        let kept = KeptHead { size: head.size, root: head.root, note: head.note };
-        log::keep_head(&mut tx.conn(), site.number, &kept).await?;
-        tx.commit().await?;
-        Ok(Issued { receipt, pdf, json })
     }
 
     async fn count(&self, site: &Site, batch: BatchId) -> Result<u64, HouseError> {
@@ -214,6 +201,15 @@ impl House {
             HouseError::Failed(format!("the issued document {name} is gone from the database"))
         })
     }
+}
+
+/// The answer to an issue, the first one or a repeat.
+fn issued(receipt: Receipt) -> Result<Issued, HouseError> {
+    let entry = receipt.entries.first();
+    let body = entry.map(|entry| issue_of(&entry.kind, entry.kv, &entry.body)).transpose()?;
+    let RecordIssued { pdf, json, .. } =
+        body.flatten().ok_or_else(|| HouseError::Failed("nothing was issued".to_owned()))?;
+    Ok(Issued { receipt, pdf, json })
 }
 
 /// The body of a `record.issued`; `None` for any other kind.

@@ -4,7 +4,8 @@
 //!
 //! - `log.key` signs heads of the log. Its public half stands in every book's founding entry.
 //! - `token.key` signs access tokens. Deleting it while the service is stopped signs everybody out.
-//! - `heads/SITE.head` is the last head this instance signed for a site ([`LastSigned`]).
+//! - `heads/DIGEST.head` is the last head this instance signed for a log, by the SHA-256 of its name
+//!   ([`LastSigned`]).
 //!
 //! Both keys are Ed25519 in PKCS#8 PEM (RFC 8410), the form `openssl genpkey -algorithm ed25519` writes.
 
@@ -19,7 +20,7 @@ use ed25519_dalek::SigningKey;
 use ed25519_dalek::pkcs8::{DecodePrivateKey, EncodePrivateKey, KeypairBytes};
 use zeroize::Zeroizing;
 
-pub use last_signed::{LastSigned, LastSignedError, SignedHead};
+pub use last_signed::{LastSigned, LastSignedError};
 
 mod last_signed;
 

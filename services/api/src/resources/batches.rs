@@ -8,6 +8,7 @@ use domain::book::Loaded;
 use domain::book::command::{Act, Draw, OpenBatch};
 use domain::book::state::{BatchState, State as Folded};
 use domain::ids::BatchId;
+use domain::stamp::Micros;
 use domain::units::{Decimal, Dimension, Quantity};
 use house::House;
 use serde::{Deserialize, Serialize};
@@ -140,9 +141,13 @@ impl NewBatch {
     }
 
     /// What it asks of the book.
-    pub(crate) fn read(self, house: &House, batch: BatchId) -> Result<OpenBatch, Problem> {
-        let mut faults = Faults::default();
-        self.texts(&mut faults);
+    pub(crate) fn read(
+        self,
+        faults: &mut Faults,
+        batch: BatchId,
+        now: Micros,
+    ) -> Option<OpenBatch> {
+        self.texts(faults);
         let volume = faults.amount("/volume", &self.volume, Dimension::Volume);
         let liquid = match &self.liquid {
             Some(liquid) => faults.amount("/liquid", liquid, Dimension::Volume),
@@ -152,8 +157,8 @@ impl NewBatch {
             .liquid_planned
             .as_ref()
             .and_then(|planned| faults.amount("/liquid_planned", planned, Dimension::Volume));
-        let opened_at = faults.at("/opened_at", stated_time(&self.opened_at, house.now()));
-        let ingredients = draws(&mut faults, "/ingredients", &self.ingredients);
+        let opened_at = faults.at("/opened_at", stated_time(&self.opened_at, now));
+        let ingredients = draws(faults, "/ingredients", &self.ingredients);
         if let Some(sugar) = &self.fermentable_sugar {
             let read = Decimal::parse(&sugar.g_per_l);
             if read.as_ref().is_ok_and(|number| !(0.0..=1_000.0).contains(&number.to_f64())) {
@@ -162,7 +167,7 @@ impl NewBatch {
             faults.at("/fermentable_sugar/g_per_l", read);
         }
         let whole = volume.zip(liquid).zip(opened_at);
-        faults.finish(whole.map(|((volume, liquid), opened_at)| OpenBatch {
+        whole.map(|((volume, liquid), opened_at)| OpenBatch {
             batch,
             code: self.code,
             name: self.name,
@@ -180,7 +185,7 @@ impl NewBatch {
             fermentable_sugar: self.fermentable_sugar.map(|sugar| (sugar.g_per_l, sugar.basis)),
             demand: self.demand,
             ingredients,
-        }))
+        })
     }
 }
 
@@ -312,8 +317,9 @@ pub(crate) async fn open(
     Strict { value, raw }: Strict<NewBatch>,
 ) -> Result<(StatusCode, Json<Recorded>), Problem> {
     let print = print("POST", "/v1/batches", &raw)?;
-    let open = value.read(&house, house.draw()?)?;
-    let act = Act::OpenBatch(Box::new(open));
+    let mut faults = Faults::default();
+    let open = value.read(&mut faults, house.draw()?, house.now());
+    let act = Act::OpenBatch(Box::new(faults.finish(open)?));
     let receipt = house.submit(asked(&caller, key, print, act)).await?;
     Ok((StatusCode::CREATED, Json(Recorded::of(&receipt, "batch", Uuid::nil()))))
 }

@@ -154,20 +154,22 @@ impl NewAmendment {
             faults.note("", "say exactly one of void, value, reading, addition, lot and batch");
             return faults.finish(None);
         }
+        let now = house.now();
         if let Some(lot) = self.lot {
             let id = match target.body.as_ref() {
                 Body::LotReceived(body) => body.lot,
                 _ => LotId(Uuid::nil()),
             };
             faults.enter("/lot");
-            let receipt = lot.read(&mut faults, id, house.now());
+            let receipt = lot.read(&mut faults, id, now);
             return faults.finish(receipt.map(|receipt| AmendTo::Receipt(Box::new(receipt))));
         }
         let batch = batch_of(target);
         if let Some(opening) = self.batch {
-            return Ok(AmendTo::Opening(Box::new(opening.read(house, batch)?)));
+            faults.enter("/batch");
+            let opening = opening.read(&mut faults, batch, now);
+            return faults.finish(opening.map(|opening| AmendTo::Opening(Box::new(opening))));
         }
-        let now = house.now();
         let to = match (self.value, self.reading, self.addition) {
             (Some(value), ..) => {
                 let read = value.value.read(&mut faults, "/value/value");

@@ -92,7 +92,7 @@ pub(crate) async fn enrol(
     Ok((StatusCode::CREATED, Json(Recorded::of(&receipt, "person", person.0))))
 }
 
-/// Grants a role; granting it again changes nothing.
+/// Grants a role; 409 if the person has it already.
 #[utoipa::path(put, path = "/v1/people/{id}/roles/{role}", operation_id = "grant_role", tag = "people", security(("bearer" = [])),
     params(("id" = Uuid, Path), ("role" = String, Path), ("Idempotency-Key" = Uuid, Header, description = "A UUID of your own for this request")),
     responses((status = 200, body = Recorded), (status = "4XX", body = ProblemDocument, content_type = "application/problem+json")))]

@@ -11,6 +11,7 @@ use domain::book::command::{
     TakeReading,
 };
 use domain::book::command::{Blob, OpenDeviation};
+use domain::book::role::Role;
 use domain::ids::{BatchId, DeviationId, LotId, MaterialId, ProposalId, VesselId};
 use domain::ledger::tree::Hash;
 use domain::stamp::{Micros, Stamp};
@@ -47,7 +48,7 @@ pub(super) fn amount(entered: &str, unit: &str) -> Quantity {
     Quantity::parse_any(entered, unit).unwrap()
 }
 
-pub(super) fn found() -> Act {
+fn found() -> Act {
     Act::Found(Box::new(Found {
         code: "cellar".to_owned(),
         name: "The cellar".to_owned(),
@@ -204,6 +205,14 @@ pub(super) fn open_deviation(number: u128, code: &str) -> Act {
         batch: Some(batch()),
         opened_at: at(0),
     })
+}
+
+/// Founds the book; whoever founds it may do everything else too.
+pub(super) async fn begin(book: &Book) {
+    book.act(found()).await.unwrap();
+    for role in Role::ALL.into_iter().filter(|role| *role != Role::Admin) {
+        book.act(Act::Grant(person(), role)).await.unwrap();
+    }
 }
 
 /// A batch with its vessel.

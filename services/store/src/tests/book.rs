@@ -77,7 +77,7 @@ pub(super) async fn on_both(test: impl AsyncFn(&Book)) {
     for ground in [Ground::file(), Ground::server()] {
         let book = Book::open(ground).await;
         eprintln!("on {}", book.db.engine());
-        book.act(super::acts::found()).await.unwrap();
+        super::acts::begin(&book).await;
         test(&book).await;
         book.writers.close().await;
         book.db.close().await;

@@ -28,7 +28,7 @@ async fn commands_sent_again_after_a_power_cut_are_written_once() {
     let cluster = Arc::new(Cluster::start());
     let name = cluster.create_database();
     let book = Arc::new(Book::open(Ground::Server(Arc::clone(&cluster), name)).await);
-    book.act(acts::found()).await.unwrap();
+    acts::begin(&book).await;
     acts::furnish(&book).await;
     let size = book.size().await;
 

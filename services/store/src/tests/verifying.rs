@@ -62,7 +62,7 @@ async fn every_alteration_of_the_log_is_found() {
             ),
         };
         for (alter, told) in [
-            (format!("update entry set bytes = {brace} where seq = 4"), "entry 4: its leaf hash"),
+            (format!("update entry set bytes = {brace} where seq = 8"), "entry 8: its leaf hash"),
             (
                 format!("update entry set leaf_hash = {zeros} where seq = 5"),
                 "entry 5: its leaf hash",
@@ -102,6 +102,23 @@ async fn a_head_that_left_the_house_betrays_a_shortened_log() {
         crate::log::keep_head(&mut tx.conn(), book.site.number, &kept).await.unwrap();
         tx.commit().await.unwrap();
         assert!(fault(book).await.contains("left the house, but there are fewer"));
+    })
+    .await;
+}
+
+#[tokio::test]
+async fn a_record_and_the_head_it_rests_on_leave_the_house_together() {
+    on_both(async |book| {
+        acts::live(book).await;
+        let mut held = book.db.reader().await.unwrap();
+        let kept = crate::log::kept_heads(&mut held.conn(), book.site.number).await.unwrap();
+        let size = book.size().await - 1;
+        let [head] = kept.as_slice() else { panic!("{kept:?}") };
+        assert_eq!(head.size, size, "the log before the entry that says so");
+        let root = crate::tiles::root_at(&mut held.conn(), book.site.number, size).await.unwrap();
+        assert_eq!(head.root, root);
+        assert!(head.note.contains(&format!("\n{size}\n")), "{}", head.note);
+        book.deep_check().await;
     })
     .await;
 }

@@ -3,7 +3,7 @@
 use std::collections::{HashMap, HashSet};
 use std::sync::Arc;
 
-use domain::book::command::{Blob, Command, DirectoryWrite, Need};
+use domain::book::command::{Act, Blob, Command, DirectoryWrite, Need};
 use domain::book::subject::Subject;
 use domain::book::table::{Cell, Change};
 use domain::book::tables::CODE;
@@ -13,7 +13,7 @@ use domain::ledger::tiles::Edge;
 use domain::ledger::tree::{Hash, TreeHead};
 
 use super::{Receipt, Tools, WriteError};
-use crate::log::{self, Head};
+use crate::log::{self, Head, KeptHead};
 use crate::projections::Pending;
 use crate::sites::Site;
 use crate::{Conn, StoreError, blobs, directory, read, tiles};
@@ -28,6 +28,8 @@ pub(super) struct Sheet {
     pending: Pending,
     blobs: Vec<Blob>,
     directory: Vec<DirectoryWrite>,
+    /// Sizes of the log on which records rest that leave the house.
+    issued: Vec<u64>,
 }
 
 impl Sheet {
@@ -46,6 +48,7 @@ impl Sheet {
             pending: Pending::default(),
             blobs: Vec::new(),
             directory: Vec::new(),
+            issued: Vec::new(),
         }
     }
 
@@ -64,6 +67,9 @@ impl Sheet {
         self.pending.add(appended.changes)?;
         self.blobs.extend(appended.blobs);
         self.directory.extend(appended.directory);
+        if let Act::Issue(issue) = &command.act {
+            self.issued.push(issue.log_size);
+        }
         self.answered.insert(command.id, (command.print, receipt.clone()));
         Ok(receipt)
     }
@@ -113,7 +119,7 @@ impl Sheet {
         self.entries.len()
     }
 
-    /// Writes it all; the head comes last.
+    /// Writes it all, with the heads that leave the house; the new head comes last.
     pub(super) async fn write(
         &self,
         conn: &mut Conn<'_>,
@@ -131,6 +137,11 @@ impl Sheet {
         }
         for tile in self.entries.iter().flat_map(|entry| edge.push(entry.leaf_hash)) {
             tiles::put(conn, site.number, &tile).await?;
+        }
+        for &size in &self.issued {
+            let root = tiles::root_at(conn, site.number, size).await?;
+            let note = (tools.sign)(&site.origin, size, &root).map_err(WriteError::Unsigned)?;
+            log::keep_head(conn, site.number, &KeptHead { size, root, note }).await?;
         }
         let head = self.position.frontier.head();
         let note =
