@@ -11,7 +11,7 @@ use std::os::unix::process::CommandExt as _;
 use std::path::{Path, PathBuf};
 use std::process::{ChildStdin, Command, Stdio};
 use std::sync::atomic::{AtomicU32, Ordering};
-use std::sync::{Arc, OnceLock};
+use std::sync::{Arc, Mutex, OnceLock, PoisonError};
 
 use tempfile::TempDir;
 
@@ -127,6 +127,16 @@ impl Cluster {
         psql.args(["--no-psqlrc", "--quiet", "--set", "ON_ERROR_STOP=1", "--command", text])
             .arg(self.url(database));
         run(&mut psql);
+    }
+
+    /// Lets a role log in. Roles belong to the whole cluster, and PostgreSQL fails one of two who alter a role at once.
+    ///
+    /// # Panics
+    /// If there is no such role.
+    pub fn let_in(&self, database: &str, role: &str) {
+        static ALTERING: Mutex<()> = Mutex::new(());
+        let _alone = ALTERING.lock().unwrap_or_else(PoisonError::into_inner);
+        self.sql(database, &format!("alter role {role} login"));
     }
 
     /// Stops the server without warning, as a power cut would.

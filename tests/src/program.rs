@@ -59,7 +59,7 @@ impl Home {
         let _alone = MIGRATING.lock().unwrap_or_else(PoisonError::into_inner);
         home.run_as_owner(&["migrate"]).expect_success();
         let (cluster, name) = home.server();
-        cluster.sql(name, &format!("alter role {SERVING_ROLE} login"));
+        cluster.let_in(name, SERVING_ROLE);
         Arc::new(home)
     }
 

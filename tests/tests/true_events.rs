@@ -65,7 +65,7 @@ on_both_engines! {
         resolve().expect(201);
         let resolved = cellar.caro.get(&path).expect(200);
         assert_eq!(resolved.text("/resolution/cause"), "a torn bag");
-        assert_eq!(resolved.text("/resolution/by"), cellar.people[2]);
+        assert_eq!(resolved.text("/resolution/by"), format!("person:{}", cellar.people[2]));
         resolve().expect_problem(409, "conflict");
         cellar.deep_check();
     }

@@ -76,7 +76,7 @@ impl Deciding<'_> {
 
     /// Now on the site's wall clock, and not before what was last said about the subject: what holds from now on must
     /// come last in the fold, also after a clock was set back.
-    pub(crate) fn from_now_on(&self, subject: Subject) -> Result<Stamp, Stop> {
+    pub(crate) fn now_at_the_end_of(&self, subject: Subject) -> Result<Stamp, Stop> {
         let newest = self.desk.subject(subject)?.entries.last().map(|entry| entry.occurred_at.at);
         let at = newest.map_or(self.now, |newest| newest.max(self.now));
         Ok(Stamp::in_zone(at, &lots::zone(self)?))

@@ -624,7 +624,7 @@ fn fits_one_entry(draft: &Draft) -> Result<(), Refusal> {
     const ENVELOPE_BYTES: usize = 1_500;
     const SUBJECT_BYTES: usize = 100;
     let subjects = draft.subjects.len();
-    let body = draft.body.write().map(|value| value.to_string().len()).unwrap_or(usize::MAX);
+    let body = draft.body.write().map_or(usize::MAX, |value| value.to_string().len());
     let bytes = body.saturating_add(ENVELOPE_BYTES + subjects * SUBJECT_BYTES);
     if subjects <= MAX_SUBJECTS && bytes <= MAX_ENTRY_BYTES {
         return Ok(());

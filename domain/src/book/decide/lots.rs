@@ -79,7 +79,7 @@ pub(super) fn change_status(
     if state.status == status {
         return Err(Refusal::conflict(format!("the lot is {} already", status.name())).into());
     }
-    let at = it.from_now_on(lot.into())?;
+    let at = it.now_at_the_end_of(lot.into())?;
     let body = LotStatusChanged { lot, status, reason: reason.to_owned() };
     let draft = it.draft(at, [Subject::from(lot)], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })

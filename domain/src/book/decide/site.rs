@@ -114,7 +114,7 @@ pub(super) fn grant(it: &mut Deciding<'_>, person: PersonId, role: Role) -> Resu
         let what = format!("the person has the role {} already", role.name());
         return Err(Refusal::conflict(what).into());
     }
-    let at = it.from_now_on(person.into())?;
+    let at = it.now_at_the_end_of(person.into())?;
     let draft = it.draft(at, [person.into()], RoleGranted { person, role });
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }
@@ -136,7 +136,7 @@ pub(super) fn withdraw(
         )
         .into());
     }
-    let at = it.from_now_on(person.into())?;
+    let at = it.now_at_the_end_of(person.into())?;
     let draft = it.draft(at, [person.into()], RoleWithdrawn { person, role, reason });
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }
@@ -150,7 +150,7 @@ pub(super) fn change_settings(
     all.extend(settings.iter().map(|(name, value)| (name.clone(), value.clone())));
     crate::book::assessing::settings_of(&all)?;
     let site = it.desk.site_id();
-    let at = it.from_now_on(site.into())?;
+    let at = it.now_at_the_end_of(site.into())?;
     let body = SettingsChanged { settings: settings.clone(), reason: reason.to_owned() };
     let draft = it.draft(at, [site.into()], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
@@ -181,7 +181,7 @@ where
 {
     it.desk.code_is_free(T::KIND, body.code(), body.id())?;
     let subject = Subject { kind: T::KIND, id: body.id() };
-    let at = it.from_now_on(subject)?;
+    let at = it.now_at_the_end_of(subject)?;
     let draft = it.draft(at, [subject], body);
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }

@@ -2,8 +2,9 @@
 //!
 //! A database put back from an old backup, or forked by a second instance, would sign a history that contradicts one
 //! already handed out. The writer therefore asks [`LastSigned::last`] and compares before it signs, and after the
-//! commit tells [`LastSigned::store`] what it signed; a commit that failed leaves no trace here. A log is known by its origin, the name under which its heads are signed, not by what a database says of
-//! its sites. Each file is read once; then its record is remembered.
+//! commit tells [`LastSigned::store`] what it signed; a commit that failed leaves no trace here. A log is known by its
+//! origin, the name under which its heads are signed, not by what a database says of its sites. Each file is read
+//! once; then its record is remembered.
 //!
 //! One record of 86 bytes per log, written in place by one `pwrite` and **not** synced: an fsync for each commit
 //! would halve the rate of a single client. After a power cut the file may lag behind the log, which is harmless

@@ -55,7 +55,7 @@ impl Ground {
     /// As the program serves.
     pub(super) async fn serving(&self) -> Db {
         let Self::Server(cluster, name) = self else { return self.owner().await };
-        cluster.sql(name, &format!("alter role {SERVING_ROLE} login"));
+        cluster.let_in(name, SERVING_ROLE);
         Db::open(&Place::Url(cluster.url_as(SERVING_ROLE, name))).await.unwrap()
     }
 }
