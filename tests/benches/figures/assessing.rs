@@ -67,7 +67,7 @@ async fn measure(house: &House) {
     let (_, opened) = state.opened.as_ref().expect("an open batch");
     let original = state.original().expect("a first gravity");
     let end = opened.expected_final.as_ref().expect("an expected end");
-    let end = FinalExtract(end.extract.parse().expect("a number"));
+    let end = FinalExtract(end.apparent_extract_percent.parse().expect("a number"));
     let span = SugarSpan::new(OriginalExtract(original.extract), end).expect("a span");
     let readings: Vec<Reading> = state
         .gravities

@@ -3,6 +3,7 @@
 use std::sync::Arc;
 
 use domain::book::body::Reading;
+use domain::book::body::readings::Temperature;
 use domain::book::command::{Act, TakeReading};
 use domain::ids::{BatchId, CommandId};
 use domain::stamp::Stamp;
@@ -59,7 +60,10 @@ impl Within {
             unit: "sg_20_20".to_owned(),
             qualifier: None,
             expressed_as: None,
-            sample_temperature: Some("20.0".to_owned()),
+            sample_temperature: Some(Temperature {
+                value: "20.0".to_owned(),
+                unit: "Cel".to_owned(),
+            }),
             method: None,
             instrument: None,
             corrected: None,
