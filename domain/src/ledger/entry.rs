@@ -4,9 +4,10 @@
 
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
+use serde_json::value::RawValue;
 use uuid::Uuid;
 
-use super::canonical::{MAX_ENTRY_BYTES, NotCanonical, canonical, is_canonical};
+use super::canonical::{MAX_ENTRY_BYTES, NotCanonical, canonical, is_canonical, verify};
 use crate::book::subject::{Subject, SubjectKind};
 use crate::ids::{CommandId, EntryId, PersonId, SiteId};
 use crate::stamp::{Micros, Stamp};
@@ -137,7 +138,7 @@ impl Numbered {
 
 /// An entry as a verifier reads it: whatever newer program wrote it, with kinds, subjects and doors of its own, its
 /// bytes, order, numbers and hashes can be checked.
-#[derive(Clone, Debug, Deserialize, PartialEq)]
+#[derive(Clone, Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Envelope {
     /// Version of the envelope.
@@ -167,8 +168,8 @@ pub struct Envelope {
     pub via: String,
     /// What it is about.
     pub subjects: Vec<AnySubject>,
-    /// What it says.
-    pub body: Value,
+    /// What it says, as it is written.
+    pub body: Box<RawValue>,
 }
 
 /// A subject of whatever kind, with its running number.
@@ -189,8 +190,16 @@ impl Envelope {
     /// # Errors
     /// [`NotAnEntry`].
     pub fn verify_bytes(bytes: &[u8]) -> Result<Self, NotAnEntry> {
-        let value = is_canonical(bytes)?;
-        serde_json::from_value(value).map_err(|e| NotAnEntry::Shape(e.to_string()))
+        verify(bytes)?;
+        serde_json::from_slice(bytes).map_err(|e| NotAnEntry::Shape(e.to_string()))
+    }
+
+    /// What it says, read.
+    ///
+    /// # Errors
+    /// [`NotAnEntry::Shape`], though not for bytes that were verified.
+    pub fn body(&self) -> Result<Value, NotAnEntry> {
+        serde_json::from_str(self.body.get()).map_err(|e| NotAnEntry::Shape(e.to_string()))
     }
 }
 

@@ -117,12 +117,13 @@ async fn check(
 ) -> Result<(), Stopped> {
     let head = log::head(conn, site.number).await?;
     walk.expect(log::kept_heads(conn, site.number).await?);
-    loop {
-        let page = log::entries(conn, site.number, walk.edge.size(), PAGE).await?;
-        if page.is_empty() {
-            break;
-        }
-        for checked in read_all(page).await {
+    let mut page = log::entries(conn, site.number, 0, PAGE).await?;
+    while let Some(last) = page.last() {
+        // The next page is fetched while this one is checked.
+        let next = log::entries(conn, site.number, last.seq + 1, PAGE);
+        let (next, checked) = tokio::join!(next, read_all(page));
+        page = next?;
+        for checked in checked {
             for tile in walk.take(checked?)? {
                 let stored = tiles::find(conn, site.number, tile.id()).await?;
                 walk.compare_tile(&tile, stored.as_ref())?;

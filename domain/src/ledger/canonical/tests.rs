@@ -18,6 +18,7 @@ fn refused(value: &Value) -> (String, Why) {
 
 fn check(value: &Value, text: &str) {
     assert_eq!(String::from_utf8(canonical(value).unwrap()).unwrap(), text);
+    assert!(scan::is_canonical(text.as_bytes()));
     assert_eq!(is_canonical(text.as_bytes()).as_ref(), Ok(value));
 }
 
@@ -151,6 +152,7 @@ fn bytes_in_another_spelling_are_refused() {
         "[1,2 ]",
     ] {
         assert_eq!(is_canonical(text.as_bytes()), Err(NotCanonical::OtherSpelling), "{text}");
+        assert!(!scan::is_canonical(text.as_bytes()), "{text}");
     }
 }
 
@@ -180,6 +182,7 @@ fn bytes_that_are_no_json_are_refused() {
         b"\xef\xbb\xbf1",
     ] {
         assert!(matches!(is_canonical(bytes), Err(NotCanonical::Unreadable(_))), "{bytes:?}");
+        assert!(!scan::is_canonical(bytes), "{bytes:?}");
     }
 }
 
@@ -224,6 +227,32 @@ proptest! {
             prop_assert_eq!(canonical(&value).unwrap(), bytes);
         }
     }
+
+    #[test]
+    fn the_scan_of_the_bytes_says_what_reading_them_says(
+        value in value(),
+        edits in proptest::collection::vec(edit(), 0..3),
+    ) {
+        let mut text: Vec<char> = String::from_utf8(canonical(&value).unwrap()).unwrap().chars().collect();
+        for (place, removed, piece) in edits {
+            let start = place.index(text.len() + 1);
+            let end = (start + removed).min(text.len());
+            text.splice(start..end, piece.chars());
+        }
+        let text: String = text.into_iter().collect();
+        let read = is_canonical(text.as_bytes());
+        prop_assert_eq!(scan::is_canonical(text.as_bytes()), read.is_ok(), "{} {:?}", text, read);
+        prop_assert_eq!(verify(text.as_bytes()), read.map(drop));
+    }
+}
+
+/// Somewhere a few characters go and a piece comes that means something in JSON or in Unicode.
+fn edit() -> impl Strategy<Value = (proptest::sample::Index, usize, &'static str)> {
+    const PIECES: [&str; 24] = [
+        "", "", "\"", "\\", "\\n", "\\t", "\\u0041", "n", "\u{301}", "e\u{301}", "\u{7f}",
+        "\u{85}", "\n", " ", ",", ":", "{", "}", "[", "]", "0", "-", "null", "\"a\":1,",
+    ];
+    (any::<proptest::sample::Index>(), 0..3_usize, proptest::sample::select(&PIECES[..]))
 }
 
 #[test]

@@ -8,6 +8,7 @@ use domain::ledger::note::{Checkpoint, VerifierKey};
 use domain::ledger::tiles::{Edge, Tile};
 use domain::ledger::tree::Hash;
 use domain::stamp::Micros;
+use serde_json::Value;
 use uuid::Uuid;
 
 use super::Fault;
@@ -64,7 +65,7 @@ impl Walk {
         self.last_recorded_at = corrected_clock(&entry)?.unwrap_or(entry.recorded_at);
         self.count(&entry)?;
         self.note_key(&entry)?;
-        self.note_documents(&entry);
+        self.note_documents(&entry)?;
         let tiles = self.edge.push(stored.leaf_hash);
         self.meet_kept_head()?;
         Ok(tiles)
@@ -132,7 +133,8 @@ impl Walk {
         if entry.seq != 0 {
             return Ok(());
         }
-        let text = |member: &str| entry.body.get(member).and_then(serde_json::Value::as_str);
+        let body = body_of(entry)?;
+        let text = |member: &str| body.get(member).and_then(Value::as_str);
         if entry.kind != "site.founded" {
             return Err(Fault::at(0, "the book does not begin with its founding"));
         }
@@ -147,16 +149,17 @@ impl Walk {
         Ok(())
     }
 
-    fn note_documents(&mut self, entry: &Envelope) {
+    fn note_documents(&mut self, entry: &Envelope) -> Result<(), Fault> {
         let members: &[&str] = match entry.kind.as_str() {
             "ruleset.adopted" => &["digest"],
             "record.issued" => &["pdf", "json"],
-            _ => &[],
+            _ => return Ok(()),
         };
-        let named = members.iter().filter_map(|m| entry.body.get(*m)?.as_str()?.parse().ok());
-        for digest in named {
+        let body = body_of(entry)?;
+        for digest in members.iter().filter_map(|m| body.get(*m)?.as_str()?.parse().ok()) {
             self.documents.entry(digest).or_insert(entry.seq);
         }
+        Ok(())
     }
 
     fn meet_kept_head(&self) -> Result<(), Fault> {
@@ -186,11 +189,16 @@ impl Walk {
     }
 }
 
+fn body_of(entry: &Envelope) -> Result<Value, Fault> {
+    entry.body().map_err(|error| Fault::at(entry.seq, chain(&error)))
+}
+
 /// What a correction of the clock says: later entries may be recorded from then on, earlier than those before.
 fn corrected_clock(entry: &Envelope) -> Result<Option<Micros>, Fault> {
     if entry.kind != "clock.corrected" {
         return Ok(None);
     }
-    let text = entry.body.get("clock").and_then(serde_json::Value::as_str).unwrap_or_default();
+    let body = body_of(entry)?;
+    let text = body.get("clock").and_then(Value::as_str).unwrap_or_default();
     Micros::parse(text).map(Some).map_err(|error| Fault::at(entry.seq, error))
 }
