@@ -313,7 +313,7 @@ fn sugar(batch: &BatchState, opened: &BatchOpened) -> Sugar {
         .fermentable_sugar
         .as_ref()
         .and_then(|stated| Some((stated.g_per_l.parse::<f64>().ok()?, stated.basis.clone())));
-    let laboratory = batch.sugar.first().map(|(_, g_per_l)| (*g_per_l, "laboratory".to_owned()));
+    let laboratory = batch.sugar.first().map(|found| (found.g_per_l, "laboratory".to_owned()));
     match (stated, by_gravity) {
         (Some((g_per_l, basis)), by_gravity) => Sugar {
             g_per_l,

@@ -46,21 +46,43 @@ pub struct Loaded {
 }
 
 impl Loaded {
-    fn of(subject: Subject, n: u64, entries: &[Entry]) -> Result<Self, FoldError> {
+    /// A subject from all of its entries, in the log's order. None of them: it does not exist.
+    ///
+    /// # Errors
+    /// [`FoldError`] if the log holds what this program cannot read.
+    pub fn read(subject: Subject, entries: &[Entry]) -> Result<Self, FoldError> {
+        let n = entries.len() as u64;
         let Known { here: entries, departed } = Known::read(subject, entries)?;
         let state = State::fold(subject, &entries);
         Ok(Self { n, entries, departed, state })
     }
 
-    /// Takes one more entry: at the end if it is the latest, else in its place with a new fold.
+    /// The subject after further entries of its own, in the log's order; `None` if an amendment is among them, for
+    /// which all of its entries are needed.
+    ///
+    /// # Errors
+    /// [`FoldError`] if the log holds what this program cannot read.
+    pub fn after(&self, subject: Subject, further: &[Entry]) -> Result<Option<Self>, FoldError> {
+        let mut next = self.clone();
+        for entry in further {
+            let read = Arc::new(InForce::original(entry)?);
+            if matches!(*read.body, Body::EntryAmended(_)) {
+                return Ok(None);
+            }
+            next.n += 1;
+            next.insert(subject, &read);
+        }
+        Ok(Some(next))
+    }
+
+    /// Takes one more entry in its place; the state is folded anew if it does not take a late one as it is.
     fn insert(&mut self, subject: Subject, entry: &Arc<InForce>) {
-        let is_latest = self.entries.last().is_none_or(|last| last.order() < entry.order());
-        if is_latest {
+        let place = self.entries.partition_point(|other| other.order() < entry.order());
+        let is_latest = place == self.entries.len();
+        self.entries.insert(place, Arc::clone(entry));
+        if is_latest || State::keeps_by_time(&entry.body) {
             self.state.apply(entry);
-            self.entries.push(Arc::clone(entry));
         } else {
-            let place = self.entries.partition_point(|other| other.order() < entry.order());
-            self.entries.insert(place, Arc::clone(entry));
             self.state = State::fold(subject, &self.entries);
         }
     }
@@ -169,10 +191,19 @@ impl Desk {
     ///
     /// # Errors
     /// [`FoldError`] if the log holds what this program cannot read.
-    pub fn put(&mut self, subject: Subject, n: u64, entries: &[Entry]) -> Result<(), FoldError> {
-        let loaded = Loaded::of(subject, n, entries)?;
-        self.subjects.insert(subject, Arc::new(loaded));
+    pub fn put(&mut self, subject: Subject, entries: &[Entry]) -> Result<(), FoldError> {
+        self.subjects.insert(subject, Arc::new(Loaded::read(subject, entries)?));
         Ok(())
+    }
+
+    /// Lays a rule set on the desk that another desk has read.
+    pub fn lend_rule_set(&mut self, digest: &str, set: Arc<RuleSet>) {
+        self.rule_sets.insert(digest.to_owned(), set);
+    }
+
+    /// A rule set that lies here, by the digest of its text.
+    pub fn rule_set(&self, digest: &str) -> Option<&Arc<RuleSet>> {
+        self.rule_sets.get(digest)
     }
 
     /// Lays a subject on the desk that another desk has folded.

@@ -18,7 +18,7 @@ pub use people::PersonState;
 pub use site::SiteState;
 pub use things::Described;
 
-use super::body::{InstrumentDescribed, MaterialDescribed, PartyDescribed, VesselDescribed};
+use super::body::{Body, InstrumentDescribed, MaterialDescribed, PartyDescribed, VesselDescribed};
 use super::in_force::InForce;
 use super::subject::{Subject, SubjectKind};
 use super::table::Row;
@@ -84,6 +84,11 @@ impl State {
             Self::Site(state) => state.apply(entry),
             Self::Vessel(state) => state.apply(entry),
         }
+    }
+
+    /// Whether every state keeps such an entry by its time, so that a late one may be taken after newer ones.
+    pub(crate) const fn keeps_by_time(body: &Body) -> bool {
+        matches!(body, Body::ReadingTaken(_))
     }
 
     /// The state after these entries.

@@ -115,7 +115,7 @@ impl Ledger {
         match need {
             Need::Subject(subject) => {
                 let entries = self.entries_of(subject, usize::MAX);
-                self.desk.put(subject, count(&entries), &entries).unwrap();
+                self.desk.put(subject, &entries).unwrap();
             }
             Need::Entry(id) => {
                 let found = self.log.iter().find(|entry| entry.id == id);

@@ -246,7 +246,7 @@ impl House {
                         let Need::Subject(subject) = need else {
                             return Err(HouseError::Failed(format!("a founding needs {need:?}")));
                         };
-                        desk.put(subject, 0, &[]).map_err(failed)?;
+                        desk.put(subject, &[]).map_err(failed)?;
                     }
                 }
             }

@@ -1,19 +1,20 @@
 //! The house: one database, its books, and whoever may open them.
 
-use std::sync::Arc;
+use std::collections::HashMap;
+use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
-use domain::book::command::{Act, Command, Need, Refusal, Stop};
+use domain::book::Desk;
+use domain::book::command::{Act, Command, Refusal, Stop};
 use domain::book::subject::Subject;
-use domain::book::{Desk, Loaded};
 use domain::ids::{CommandId, SiteId};
 use domain::ledger::entry::{Actor, Via};
 use domain::ledger::note::Checkpoint;
 use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::{Micros, Stamp};
+use store::Db;
 use store::proofs::Prover;
 use store::sites::{self, Site};
 use store::writer::{Receipt, Tools, Writers};
-use store::{Db, StoreError};
 use uuid::Uuid;
 
 use crate::caller::Caller;
@@ -39,6 +40,8 @@ pub(crate) struct Inner {
     pub(crate) secrets: Arc<Secrets>,
     pub(crate) passwords: Passwords,
     pub(crate) tokens: Tokens,
+    /// Sites asked for before; what is said of a site here never changes.
+    sites: Mutex<HashMap<SiteId, Site>>,
 }
 
 impl House {
@@ -58,6 +61,7 @@ impl House {
             secrets,
             passwords: Passwords::new()?,
             tokens,
+            sites: Mutex::default(),
         };
         let house = Self { inner: Arc::new(inner) };
         house.only_simulations_on_a_driven_clock().await?;
@@ -150,9 +154,18 @@ impl House {
     /// # Errors
     /// [`HouseError::Refused`] as unknown.
     pub async fn site(&self, id: SiteId) -> Result<Site, HouseError> {
+        if let Some(known) = self.known_sites().get(&id) {
+            return Ok(known.clone());
+        }
         let mut held = self.inner.db.reader().await?;
         let found = sites::by_id(&mut held.conn(), id).await?;
-        found.ok_or_else(|| HouseError::Refused(Refusal::unknown("site")))
+        let site = found.ok_or_else(|| HouseError::Refused(Refusal::unknown("site")))?;
+        self.known_sites().insert(id, site.clone());
+        Ok(site)
+    }
+
+    fn known_sites(&self) -> MutexGuard<'_, HashMap<SiteId, Site>> {
+        self.inner.sites.lock().unwrap_or_else(PoisonError::into_inner)
     }
 
     /// Carries out what somebody asks, once.
@@ -180,20 +193,9 @@ impl House {
     pub async fn desk(&self, site: &Site, subjects: &[Subject]) -> Result<Desk, HouseError> {
         let mut held = self.inner.db.reader().await?;
         let mut desk = Desk::new(site.id);
-        for subject in subjects {
-            let loaded = self.loaded(&mut held.conn(), site, *subject).await?;
-            desk.lend(*subject, loaded);
-        }
+        let published = self.inner.writers.published();
+        published.lay_subjects(&mut held.conn(), site, &mut desk, subjects).await?;
         Ok(desk)
-    }
-
-    async fn loaded(
-        &self,
-        conn: &mut store::Conn<'_>,
-        site: &Site,
-        subject: Subject,
-    ) -> Result<Arc<Loaded>, StoreError> {
-        self.inner.writers.published().load(conn, site, subject).await
     }
 
     /// Asks something of a desk, laying on it what is needed until the answer comes.
@@ -212,14 +214,8 @@ impl House {
                 Ok(answer) => return Ok(answer),
                 Err(Stop::Refused(refusal)) => return Err(HouseError::Refused(refusal)),
                 Err(Stop::Need(needs)) => {
-                    for need in &needs {
-                        if let Need::Subject(subject) = need {
-                            let loaded = self.loaded(&mut held.conn(), site, *subject).await?;
-                            desk.lend(*subject, loaded);
-                        } else {
-                            store::read::lay(&mut held.conn(), site, desk, need).await?;
-                        }
-                    }
+                    let published = self.inner.writers.published();
+                    published.lay(&mut held.conn(), site, desk, &needs).await?;
                 }
             }
         }

@@ -3,7 +3,6 @@
 use std::collections::HashMap;
 
 use domain::ids::CommandId;
-use sqlx::QueryBuilder;
 use uuid::Uuid;
 
 use crate::bulk::padded;
@@ -12,6 +11,13 @@ use crate::log::unsigned;
 use crate::sites::SiteNumber;
 use crate::writer::{Receipt, WriteError};
 use crate::{StoreError, log};
+
+/// Goes on with the site.
+const FIRST_OF_EACH: &str = "select first_seq from command where command = column1 and site = ";
+const COMMAND: &str = "select entries, print from command where site = $1 and command = $2";
+
+#[cfg(test)]
+pub(crate) const TEXTS: &[&str] = &[COMMAND];
 
 /// A command carried out earlier.
 #[derive(Clone, Debug, Eq, PartialEq)]
@@ -53,7 +59,7 @@ pub(crate) async fn repeat(
     Ok(Ok(Receipt { entries }))
 }
 
-/// Those of the given commands that were carried out, in one statement for a group.
+/// Those of the given commands that were carried out: of a group usually none, which one statement tells.
 pub(crate) async fn find(
     conn: &mut Conn<'_>,
     site: SiteNumber,
@@ -61,20 +67,12 @@ pub(crate) async fn find(
 ) -> Result<HashMap<CommandId, Earlier>, StoreError> {
     let mut found = HashMap::new();
     for list in padded(ids) {
-        let rows: Vec<(Vec<u8>, i64, i64, Vec<u8>)> = on!(conn, |c| {
-            let mut query = QueryBuilder::new(
-                "select command, first_seq, entries, print from command where site = ",
-            );
-            query.push_bind(site.0).push(" and command in (");
-            let mut places = query.separated(", ");
-            for id in &list {
-                places.push_bind(id.0.as_bytes().as_slice());
-            }
-            query.push(")").build_query_as().fetch_all(c).await?
-        });
-        for (id, first_seq, entries, print) in rows {
-            let id = Uuid::from_slice(&id)
+        let keys = list.iter().map(|id| id.0.as_bytes().to_vec());
+        for (key, first_seq) in log::each(conn, site, FIRST_OF_EACH, keys).await? {
+            let id = Uuid::from_slice(&key)
                 .map_err(|_| StoreError::inconsistent("a command's key is not an id"))?;
+            let (entries, print) =
+                on!(conn, |c| sqlx::query_as(COMMAND).bind(site.0).bind(&key).fetch_one(c).await?);
             let earlier = Earlier { first_seq: unsigned(first_seq)?, entries, print };
             found.insert(CommandId(id), earlier);
         }

@@ -8,7 +8,9 @@ use std::time::Duration;
 
 use sqlx::pool::PoolConnection;
 use sqlx::sqlite::{SqliteConnectOptions, SqliteJournalMode, SqlitePoolOptions, SqliteSynchronous};
-use sqlx::{PgConnection, Postgres, Sqlite, SqliteConnection, SqlitePool, Transaction};
+use sqlx::{
+    Connection as _, PgConnection, Postgres, Sqlite, SqliteConnection, SqlitePool, Transaction,
+};
 
 pub use self::server::Server;
 use crate::StoreError;
@@ -18,6 +20,9 @@ const STATEMENTS: usize = 512;
 
 /// How long one waits for a free connection before the answer is "try later".
 const PATIENCE: Duration = Duration::from_secs(5);
+
+/// A file is locked from the start: a transaction that came to write late would be refused.
+const WRITING: &str = "begin immediate";
 
 /// The file of a book on SQLite within its data directory.
 const FILE: &str = "book.db";
@@ -65,14 +70,14 @@ pub enum Held {
 }
 
 /// A writing transaction; dropped without [`Tx::commit`] it is rolled back.
-pub enum Tx {
+pub enum Tx<'a> {
     /// Of a file.
-    Sqlite(Transaction<'static, Sqlite>),
+    Sqlite(Transaction<'a, Sqlite>),
     /// Of a server.
-    Postgres(Transaction<'static, Postgres>),
+    Postgres(Transaction<'a, Postgres>),
 }
 
-impl fmt::Debug for Tx {
+impl fmt::Debug for Tx<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         f.write_str("Tx")
     }
@@ -127,13 +132,24 @@ impl Db {
         })
     }
 
+    /// A connection for writing, to be used for several transactions.
+    ///
+    /// # Errors
+    /// [`StoreError::Database`] if none becomes free in time.
+    pub(crate) async fn writer(&self) -> Result<Held, StoreError> {
+        Ok(match self {
+            Self::Sqlite { write, .. } => Held::Sqlite(write.acquire().await?),
+            Self::Postgres(server) => Held::Postgres(server.acquire_primary().await?),
+        })
+    }
+
     /// A transaction that may write.
     ///
     /// # Errors
     /// [`StoreError::Database`].
-    pub async fn begin(&self) -> Result<Tx, StoreError> {
+    pub async fn begin(&self) -> Result<Tx<'static>, StoreError> {
         Ok(match self {
-            Self::Sqlite { write, .. } => Tx::Sqlite(write.begin_with("begin immediate").await?),
+            Self::Sqlite { write, .. } => Tx::Sqlite(write.begin_with(WRITING).await?),
             Self::Postgres(server) => Tx::Postgres(server.begin("begin").await?),
         })
     }
@@ -142,7 +158,7 @@ impl Db {
     ///
     /// # Errors
     /// [`StoreError::Database`].
-    pub async fn snapshot(&self) -> Result<Tx, StoreError> {
+    pub async fn snapshot(&self) -> Result<Tx<'static>, StoreError> {
         const STILL: &str = "begin isolation level repeatable read, read only";
         Ok(match self {
             Self::Sqlite { read, .. } => Tx::Sqlite(read.begin().await?),
@@ -183,9 +199,17 @@ impl Held {
             Self::Postgres(held) => Conn::Postgres(held),
         }
     }
+
+    /// A transaction that may write, on this connection.
+    pub(crate) async fn begin(&mut self) -> Result<Tx<'_>, StoreError> {
+        Ok(match self {
+            Self::Sqlite(held) => Tx::Sqlite(held.begin_with(WRITING).await?),
+            Self::Postgres(held) => Tx::Postgres(held.begin().await?),
+        })
+    }
 }
 
-impl Tx {
+impl Tx<'_> {
     /// To run statements on.
     pub fn conn(&mut self) -> Conn<'_> {
         match self {

@@ -26,6 +26,7 @@ mod tests;
 pub mod tiles;
 pub mod verify;
 pub mod writer;
+mod writes;
 
 pub use db::{Conn, Db, Held, Place, Tx};
 pub use error::StoreError;

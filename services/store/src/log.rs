@@ -4,7 +4,6 @@ pub mod head;
 
 use std::collections::HashMap;
 
-use domain::book::Sealed;
 use domain::book::subject::Subject;
 use domain::ids::EntryId;
 use domain::ledger::entry::Entry;
@@ -12,9 +11,9 @@ use domain::ledger::tree::Hash;
 use sqlx::QueryBuilder;
 
 pub use self::head::{Head, KeptHead, head, keep_head, kept_heads};
-pub(crate) use self::head::{lock_head, put_head, start};
+pub(crate) use self::head::{lock_head, start};
 use crate::StoreError;
-use crate::bulk::{padded, pieces};
+use crate::bulk::padded;
 use crate::db::{Conn, on};
 use crate::sites::SiteNumber;
 
@@ -51,6 +50,8 @@ const ENTRIES_OF: &str = "select s.n, e.seq, e.bytes, e.leaf_hash from subject_e
     join entry e on e.site = s.site and e.seq = s.seq \
     where s.site = $1 and s.subject = $2 and s.n > $3 order by s.n limit $4";
 const COUNT_OF: &str = "select n from subject where site = $1 and subject = $2";
+/// Goes on with the site.
+const COUNT_OF_EACH: &str = "select n from subject where subject = column1 and site = ";
 const LEAF_HASHES: &str = "select leaf_hash from entry \
     where site = $1 and seq >= $2 and seq < $3 order by seq";
 
@@ -165,22 +166,33 @@ pub(crate) async fn counts(
 ) -> Result<HashMap<Subject, u64>, StoreError> {
     let mut found = HashMap::new();
     for list in padded(subjects) {
-        let rows: Vec<(Vec<u8>, i64)> = on!(conn, |c| {
-            let mut query = QueryBuilder::new("select subject, n from subject where site = ");
-            query.push_bind(site.0).push(" and subject in (");
-            let mut places = query.separated(", ");
-            for subject in &list {
-                places.push_bind(subject.key().to_vec());
-            }
-            query.push(")").build_query_as().fetch_all(c).await?
-        });
-        for (key, n) in rows {
+        let keys = list.iter().map(|subject| subject.key().to_vec());
+        for (key, n) in each(conn, site, COUNT_OF_EACH, keys).await? {
             let subject = Subject::of_key(&key)
                 .ok_or_else(|| StoreError::inconsistent("a counter is of no subject"))?;
             found.insert(subject, unsigned(n)?);
         }
     }
     Ok(found)
+}
+
+/// What a subquery says of each key, for those of which it says anything. Asked so, both engines look each key up in
+/// the index; a list behind `in` may be held against every row of a site.
+pub(crate) async fn each(
+    conn: &mut Conn<'_>,
+    site: SiteNumber,
+    subquery: &'static str,
+    keys: impl IntoIterator<Item = Vec<u8>>,
+) -> Result<Vec<(Vec<u8>, i64)>, StoreError> {
+    let rows: Vec<(Vec<u8>, Option<i64>)> = on!(conn, |c| {
+        let mut query = QueryBuilder::new("select column1, (");
+        query.push(subquery).push_bind(site.0).push(") from (");
+        query.push_values(keys, |mut values, key| {
+            values.push_bind(key);
+        });
+        query.push(") as wanted").build_query_as().fetch_all(c).await?
+    });
+    Ok(rows.into_iter().filter_map(|(key, found)| Some((key, found?))).collect())
 }
 
 /// The leaf hashes of a range of entries.
@@ -200,28 +212,6 @@ pub(crate) async fn leaf_hashes(
         return Err(StoreError::inconsistent(format!("entries are missing in {range:?}")));
     }
     rows.iter().map(|row| hash(row)).collect()
-}
-
-/// Writes new entries.
-pub(crate) async fn append(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    entries: &[Sealed],
-) -> Result<(), StoreError> {
-    let numbered =
-        entries.iter().map(|e| Ok((signed(e.seq)?, e))).collect::<Result<Vec<_>, StoreError>>()?;
-    on!(conn, |c| for piece in pieces(&numbered) {
-        let mut query = QueryBuilder::new("insert into entry (site, seq, bytes, leaf_hash) ");
-        query.push_values(piece, |mut values, (seq, entry)| {
-            values
-                .push_bind(site.0)
-                .push_bind(*seq)
-                .push_bind(entry.bytes.as_slice())
-                .push_bind(entry.leaf_hash.as_bytes().as_slice());
-        });
-        query.build().execute(&mut *c).await?;
-    });
-    Ok(())
 }
 
 fn stored((seq, bytes, leaf_hash): EntryRow) -> Result<Stored, StoreError> {

@@ -1,16 +1,15 @@
-//! Writes what entries change in the projection tables: a whole group at a time, one statement per table.
+//! What entries change in the projection tables, a whole group at a time: one statement per table.
 
 use std::collections::BTreeMap;
 
 use domain::book::table::{Cell, CellKind, Change, Column, Row, Table};
 use domain::book::tables::tables;
-use sqlx::QueryBuilder;
 
 use crate::StoreError;
-use crate::bulk::pieces;
 use crate::db::{Conn, on};
 use crate::schema::SITE;
 use crate::sites::SiteNumber;
+use crate::writes::Writes;
 
 /// The changes of a group: of several to one row, the last counts.
 #[derive(Debug, Default)]
@@ -50,28 +49,16 @@ impl Pending {
         self.tables.get(table).into_iter().flat_map(BTreeMap::values).filter_map(row_of)
     }
 
-    /// Writes everything.
-    ///
-    /// # Errors
-    /// [`StoreError::Database`].
-    pub(crate) async fn write(
-        &self,
-        conn: &mut Conn<'_>,
-        site: SiteNumber,
-    ) -> Result<(), StoreError> {
+    /// Hands everything over to be written.
+    pub(crate) fn write<'a>(&'a self, writes: &mut Writes<'a>) {
         for table in tables() {
             let Some(changes) = self.tables.get(table.name) else { continue };
             let put: Vec<&Row> = changes.values().filter_map(row_of).collect();
-            for piece in pieces(&put) {
-                upsert(conn, site, table, piece).await?;
-            }
+            writes.put(table, &put);
             let gone = changes.iter().filter(|(_, change)| row_of(change).is_none());
             let gone: Vec<&[Cell]> = gone.map(|(key, _)| key.as_slice()).collect();
-            for piece in pieces(&gone) {
-                remove(conn, site, table, piece).await?;
-            }
+            writes.remove(table, &gone);
         }
-        Ok(())
     }
 }
 
@@ -109,79 +96,6 @@ fn checked_key(row: &Row) -> Result<Vec<Cell>, StoreError> {
         )));
     }
     Ok(row.key().to_vec())
-}
-
-/// Binds a value with the type of its column, so that an empty one has a type too.
-macro_rules! push_cell {
-    ($values:expr, $kind:expr, $cell:expr) => {
-        match ($kind, $cell) {
-            (_, Cell::Int(value)) => $values.push_bind(*value),
-            (_, Cell::Text(value)) => $values.push_bind(value.as_str()),
-            (_, Cell::Bytes(value)) => $values.push_bind(value.as_slice()),
-            (CellKind::Int, Cell::Null) => $values.push_bind(None::<i64>),
-            (CellKind::Text, Cell::Null) => $values.push_bind(None::<&str>),
-            (CellKind::Bytes, Cell::Null) => $values.push_bind(None::<&[u8]>),
-        }
-    };
-}
-pub(crate) use push_cell;
-
-async fn upsert(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    table: &Table,
-    rows: &[&Row],
-) -> Result<(), StoreError> {
-    let names: Vec<&str> = table.columns.iter().map(|c| c.name).collect();
-    on!(conn, |c| {
-        let mut query = QueryBuilder::new(format!(
-            "insert into {} ({SITE}, {}) ",
-            table.name,
-            names.join(", ")
-        ));
-        query.push_values(rows, |mut values, row| {
-            values.push_bind(site.0);
-            for (column, cell) in table.columns.iter().zip(&row.cells) {
-                push_cell!(values, column.kind, cell);
-            }
-        });
-        query.push(on_conflict(table)).build().execute(c).await?;
-    });
-    Ok(())
-}
-
-fn on_conflict(table: &Table) -> String {
-    let (key, rest) = table.columns.split_at(table.key);
-    let key: Vec<&str> = key.iter().map(|c| c.name).collect();
-    let sets: Vec<String> =
-        rest.iter().map(|c| format!("{name} = excluded.{name}", name = c.name)).collect();
-    let action = if sets.is_empty() {
-        "do nothing".to_owned()
-    } else {
-        format!("do update set {}", sets.join(", "))
-    };
-    format!(" on conflict ({SITE}, {}) {action}", key.join(", "))
-}
-
-async fn remove(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    table: &Table,
-    keys: &[&[Cell]],
-) -> Result<(), StoreError> {
-    let columns = &table.columns[..table.key];
-    let names: Vec<&str> = columns.iter().map(|c| c.name).collect();
-    on!(conn, |c| {
-        let mut query = QueryBuilder::new(format!("delete from {} where {SITE} = ", table.name));
-        query.push_bind(site.0).push(format!(" and ({}) in (", names.join(", ")));
-        query.push_values(keys, |mut values, key| {
-            for (column, cell) in columns.iter().zip(*key) {
-                push_cell!(values, column.kind, cell);
-            }
-        });
-        query.push(")").build().execute(c).await?;
-    });
-    Ok(())
 }
 
 #[cfg(test)]

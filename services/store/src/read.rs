@@ -1,10 +1,13 @@
 //! Lays on a desk what a decision asks for, from the tables.
 
-use domain::book::Desk;
+use std::sync::Arc;
+
 use domain::book::command::Need;
 use domain::book::subject::Subject;
 use domain::book::table::{Cell, Row};
 use domain::book::tables::CODE;
+use domain::book::{Desk, Loaded};
+use domain::ledger::entry::Entry;
 use domain::ledger::tree::Hash;
 use uuid::Uuid;
 
@@ -26,7 +29,7 @@ pub async fn lay(
     match need {
         Need::Subject(subject) => {
             let n = log::count_of(conn, site.number, subject).await?;
-            lay_subject(conn, site, desk, *subject, n).await?;
+            desk.lend(*subject, load(conn, site, *subject, n, None).await?);
         }
         Need::Entry(id) => {
             let stored = log::entry_by_id(conn, site.number, *id).await?;
@@ -50,23 +53,47 @@ pub async fn lay(
     Ok(())
 }
 
-/// Lays a subject on a desk, from its `n` entries.
-pub(crate) async fn lay_subject(
+/// A subject of `n` entries, from an older state of it if there is one and from the log.
+pub(crate) async fn load(
     conn: &mut Conn<'_>,
     site: &Site,
-    desk: &mut Desk,
     subject: Subject,
     n: u64,
-) -> Result<(), StoreError> {
-    let stored = match n {
-        0 => Vec::new(),
-        _ => log::entries_of(conn, site.number, &subject, 0, log::signed(n)?).await?,
-    };
-    if stored.len() as u64 != n {
+    older: Option<Arc<Loaded>>,
+) -> Result<Arc<Loaded>, StoreError> {
+    let odd = |error| StoreError::inconsistent(chain(&error));
+    if let Some(older) = older {
+        if older.n == n {
+            return Ok(older);
+        }
+        if older.n < n {
+            let further = entries(conn, site, &subject, older.n, n).await?;
+            if let Some(newer) = older.after(subject, &further).map_err(odd)? {
+                return Ok(Arc::new(newer));
+            }
+        }
+    }
+    let entries = entries(conn, site, &subject, 0, n).await?;
+    Ok(Arc::new(Loaded::read(subject, &entries).map_err(odd)?))
+}
+
+/// The entries of a subject after its number `after`, up to `n`.
+async fn entries(
+    conn: &mut Conn<'_>,
+    site: &Site,
+    subject: &Subject,
+    after: u64,
+    n: u64,
+) -> Result<Vec<Entry>, StoreError> {
+    let length = n.saturating_sub(after);
+    if length == 0 {
+        return Ok(Vec::new());
+    }
+    let stored = log::entries_of(conn, site.number, subject, after, log::signed(length)?).await?;
+    if stored.len() as u64 != length {
         return Err(StoreError::inconsistent(format!("{subject} has not {n} entries")));
     }
-    let entries = stored.iter().map(log::Stored::entry).collect::<Result<Vec<_>, StoreError>>()?;
-    desk.put(subject, n, &entries).map_err(|error| StoreError::inconsistent(chain(&error)))
+    stored.iter().map(log::Stored::entry).collect()
 }
 
 pub(crate) fn lay_rule_set(

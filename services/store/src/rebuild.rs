@@ -16,6 +16,7 @@ use crate::error::chain;
 use crate::projections::{Pending, clear};
 use crate::rows::Select;
 use crate::sites::Site;
+use crate::writes::Writes;
 use crate::{Conn, Db, StoreError, log};
 
 /// Entries fetched at a time.
@@ -107,7 +108,10 @@ pub(crate) async fn rewrite(conn: &mut Conn<'_>, site: &Site) -> Result<(), Stor
     for table in tables() {
         clear(conn, site.number, table).await?;
     }
-    replay(conn, site).await?.write(conn, site.number).await
+    let made = replay(conn, site).await?;
+    let mut writes = Writes::default();
+    made.write(&mut writes);
+    writes.send(conn, site.number).await
 }
 
 /// What the whole log makes of empty tables.
@@ -130,7 +134,7 @@ fn take(desk: &mut Desk, entry: &Entry) -> Result<Vec<Change>, StoreError> {
     let odd = |error| StoreError::inconsistent(chain(&error));
     for subject in entry.subjects() {
         if desk.loaded(&subject).is_none() {
-            desk.put(subject, 0, &[]).map_err(odd)?;
+            desk.put(subject, &[]).map_err(odd)?;
         }
     }
     let mut changes = desk.take(entry).map_err(odd)?;

@@ -5,9 +5,9 @@ use sqlx::{QueryBuilder, Row as _};
 
 use crate::StoreError;
 use crate::db::{Conn, on};
-use crate::projections::push_cell;
 use crate::schema::SITE;
 use crate::sites::SiteNumber;
+use crate::writes::push_cell;
 
 /// Reads one row by the kinds of its columns.
 macro_rules! decode {

@@ -98,7 +98,7 @@ impl Engine {
     fn options(self, table: &Table) -> &'static str {
         match self {
             Self::Postgres => "",
-            Self::Sqlite if table.columns.len() <= table.key + 2 => " strict, without rowid",
+            Self::Sqlite if table.columns.len() <= table.key + 3 => " strict, without rowid",
             Self::Sqlite => " strict",
         }
     }

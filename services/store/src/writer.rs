@@ -1,7 +1,7 @@
 //! The only way into the log: one task a site, which commits whatever waits together.
 //!
-//! In one transaction the task locks the head, decides each command on the state after the ones before it, writes
-//! entries and projections in one statement a table, and sets the signed head last. A refusal is decided, not
+//! In one transaction the task locks the head, decides each command on the state after the ones before it, and writes
+//! entries, projections and the signed head in one message. A refusal is decided, not
 //! suffered: it leaves the other commands of the group untouched. Only after the commit does anyone get an answer, and
 //! nobody's hanging up stops a commit. A file has one writer for all sites, a server one for each.
 
@@ -22,7 +22,7 @@ use domain::ids::SiteId;
 use domain::ledger::entry::Entry;
 use domain::ledger::tree::{Hash, TreeHead};
 use domain::stamp::Micros;
-use tokio::sync::{mpsc, oneshot};
+use tokio::sync::{Semaphore, mpsc, oneshot};
 use tokio::task::JoinHandle;
 use uuid::Uuid;
 
@@ -32,6 +32,9 @@ use crate::{Db, StoreError, log};
 
 /// Commands in one commit at most.
 pub const GROUP: usize = 256;
+
+/// Writers that may keep their connection from one group to the next; there are twice as many connections.
+const SEATS: usize = 8;
 
 /// Signs a log's size and root under its origin, and gives the signed note.
 pub type Sign = dyn Fn(&str, u64, &Hash) -> Result<String, String> + Send + Sync;
@@ -167,6 +170,7 @@ struct Shared {
     counters: Arc<Counters>,
     published: Arc<Published>,
     desks: Mutex<Desks>,
+    seats: Arc<Semaphore>,
 }
 
 #[derive(Default)]
@@ -186,7 +190,8 @@ impl Writers {
     /// Writers for a migrated database; each starts with its first command.
     pub fn new(db: Db, tools: Tools) -> Self {
         let (counters, published, desks) = Default::default();
-        Self { shared: Arc::new(Shared { db, tools, counters, published, desks }) }
+        let seats = Arc::new(Semaphore::new(SEATS));
+        Self { shared: Arc::new(Shared { db, tools, counters, published, desks, seats }) }
     }
 
     /// Carries a command out, or reports what it did when it was sent before. Dropping the future does not undo it.

@@ -25,8 +25,8 @@ pub struct BatchState {
     pub gravities: Vec<Gravity>,
     /// Assimilable nitrogen found, by time of sampling.
     pub nitrogen: Vec<NitrogenFound>,
-    /// Laboratory or own sugar results in g/L, by time of sampling.
-    pub sugar: Vec<(Micros, f64)>,
+    /// Sugar found by the laboratory or the house, by time of sampling.
+    pub sugar: Vec<SugarFound>,
     /// What was added, by time.
     pub additions: Vec<Arc<InForce>>,
     /// What was proposed.
@@ -59,12 +59,25 @@ pub struct Gravity {
 /// Assimilable nitrogen of one sample, mg N/L.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct NitrogenFound {
+    /// Which entry says so.
+    pub seq: u64,
     /// When the sample was taken.
     pub sampled_at: Micros,
     /// As ammonium.
     pub ammonium: f64,
     /// As primary amino nitrogen.
     pub amino: f64,
+}
+
+/// Sugar of one sample.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct SugarFound {
+    /// Which entry says so.
+    pub seq: u64,
+    /// When the sample was taken.
+    pub sampled_at: Micros,
+    /// How much, g/L.
+    pub g_per_l: f64,
 }
 
 /// A signature: when, by whom, what.
@@ -145,6 +158,7 @@ impl BatchState {
         self.opened = Some((entry.occurred_at, body.clone()));
     }
 
+    /// Keeps what was read by its time, wherever in the fold it comes.
     fn read(&mut self, entry: &InForce, body: &ReadingTaken) {
         let at = entry.occurred_at.at;
         for value in &body.values {
@@ -153,20 +167,23 @@ impl BatchState {
                 && let (Ok(sg), Ok(extract)) =
                     (corrected.sg_20_20.parse(), corrected.apparent_extract_percent.parse())
             {
-                self.gravities.push(Gravity { seq: entry.seq, at, sg, extract });
+                let gravity = Gravity { seq: entry.seq, at, sg, extract };
+                insert_by(&mut self.gravities, gravity, |known| (known.at, known.seq));
             }
             if value.quantity == "sugar"
                 && value.qualifier.is_none()
                 && let Ok(g_per_l) = value.value.parse()
             {
-                self.sugar.push((at, g_per_l));
+                let sugar = SugarFound { seq: entry.seq, sampled_at: at, g_per_l };
+                insert_by(&mut self.sugar, sugar, |known| (known.sampled_at, known.seq));
             }
         }
         if let Some(found) = &body.nitrogen
             && let (Ok(ammonium), Ok(amino)) =
                 (found.ammonium_mg_l.parse(), found.amino_mg_l.parse())
         {
-            self.nitrogen.push(NitrogenFound { sampled_at: at, ammonium, amino });
+            let found = NitrogenFound { seq: entry.seq, sampled_at: at, ammonium, amino };
+            insert_by(&mut self.nitrogen, found, |known| (known.sampled_at, known.seq));
         }
     }
 
@@ -233,4 +250,10 @@ impl BatchState {
             },
         ]
     }
+}
+
+/// Inserts after everything that comes before it or with it.
+fn insert_by<T, K: Ord>(list: &mut Vec<T>, item: T, order: impl Fn(&T) -> K) {
+    let key = order(&item);
+    list.insert(list.partition_point(|known| order(known) <= key), item);
 }

@@ -332,8 +332,7 @@ impl<'a> Loader<'a> {
         for entry in &entries {
             self.note(entry)?;
         }
-        let n = entries.len() as u64;
-        self.desk.put(subject, n, &entries).map_err(|e| inconsistent(&e))?;
+        self.desk.put(subject, &entries).map_err(|e| inconsistent(&e))?;
         Ok(entries)
     }
 

@@ -1,7 +1,8 @@
 //! A PostgreSQL server, or several of which one at a time is the primary.
 //!
-//! The driver knows neither several hosts nor which of them may write. So each connection is asked before it is used,
-//! and when none can be had, the hosts are asked in turn and the pool is pointed at the primary.
+//! The driver knows neither several hosts nor which of them may write. So each connection is asked when it is made and
+//! after it lay idle, and when none can be had, the hosts are asked in turn and the pool is pointed at the primary. A
+//! primary that becomes a standby restarts, so a connection to a primary stays one.
 
 use std::str::FromStr;
 use std::sync::Arc;
@@ -19,8 +20,15 @@ use crate::StoreError;
 /// Connections at most.
 const CONNECTIONS: u32 = 16;
 
+/// How long a connection may lie before it is asked again.
+const UNASKED: Duration = Duration::from_secs(1);
+
 /// How long one host is given to answer.
 const HOST_PATIENCE: Duration = Duration::from_secs(2);
+
+/// Everything the service asks for is found by a key or in the order of an index. A plan made while a table was empty
+/// would read all of it, and is kept until the table is analysed.
+const BY_INDEX: (&str, &str) = ("enable_seqscan", "off");
 
 const IS_PRIMARY: &str = "select not pg_is_in_recovery()";
 
@@ -47,7 +55,11 @@ impl Server {
     pub(super) async fn open(addresses: &str) -> Result<Self, StoreError> {
         let all = addresses
             .split(',')
-            .map(|url| Ok(PgConnectOptions::from_str(url)?.statement_cache_capacity(STATEMENTS)))
+            .map(|url| {
+                Ok(PgConnectOptions::from_str(url)?
+                    .statement_cache_capacity(STATEMENTS)
+                    .options([BY_INDEX]))
+            })
             .collect::<Result<Vec<_>, sqlx::Error>>()?;
         let primary = find_primary(&all).await?;
         let patience = if all.len() == 1 { PATIENCE } else { HOST_PATIENCE };
@@ -55,7 +67,16 @@ impl Server {
             .max_connections(CONNECTIONS)
             .acquire_timeout(patience)
             .test_before_acquire(false)
-            .before_acquire(|conn, _| Box::pin(async move { is_primary(conn).await }))
+            .before_acquire(|conn, standing| {
+                let asked = standing.idle_for >= UNASKED;
+                Box::pin(async move { Ok(!asked || is_primary(conn).await?) })
+            })
+            .after_connect(|conn, _| {
+                Box::pin(async move {
+                    let primary = is_primary(conn).await?;
+                    if primary { Ok(()) } else { Err(standby()) }
+                })
+            })
             .connect_lazy_with(primary);
         let hosts = Hosts { all, turns: AtomicU64::new(0), seeking: Mutex::new(()) };
         Ok(Self { pool, hosts: Arc::new(hosts) })
@@ -70,6 +91,18 @@ impl Server {
             }
             outcome => outcome,
         }
+    }
+
+    /// A connection that has just been asked, whatever it was before.
+    pub(super) async fn acquire_primary(&self) -> Result<PoolConnection<Postgres>, StoreError> {
+        let turn = self.turn();
+        let mut held = self.acquire().await?;
+        if is_primary(&mut held).await.unwrap_or_default() {
+            return Ok(held);
+        }
+        held.close_on_drop();
+        self.seek_primary(turn).await?;
+        self.acquire().await
     }
 
     pub(super) async fn begin(
@@ -113,7 +146,7 @@ async fn find_primary(hosts: &[PgConnectOptions]) -> Result<PgConnectOptions, St
     for host in hosts {
         match tokio::time::timeout(HOST_PATIENCE, ask(host)).await {
             Ok(Ok(true)) => return Ok(host.clone()),
-            Ok(Ok(false)) => last = std::io::Error::other("the server is a standby").into(),
+            Ok(Ok(false)) => last = standby(),
             Ok(Err(error)) => last = error,
             Err(_) => last = sqlx::Error::PoolTimedOut,
         }
@@ -126,6 +159,10 @@ async fn ask(host: &PgConnectOptions) -> Result<bool, sqlx::Error> {
     let answer = is_primary(&mut conn).await?;
     conn.close().await?;
     Ok(answer)
+}
+
+fn standby() -> sqlx::Error {
+    std::io::Error::other("the server is a standby").into()
 }
 
 async fn is_primary(conn: &mut PgConnection) -> Result<bool, sqlx::Error> {

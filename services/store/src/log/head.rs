@@ -48,15 +48,13 @@ const HEAD: &str = "select size, frontier, root, note, last_recorded_at \
 /// Changes nothing, but holds the row until the transaction ends: PostgreSQL's other writers wait here.
 const LOCK_HEAD: &str = "update log_head set size = size where site = $1 \
     returning size, frontier, root, note, last_recorded_at";
-const PUT_HEAD: &str = "update log_head set size = $2, frontier = $3, root = $4, note = $5, \
-    last_recorded_at = $6 where site = $1";
 const KEEP_HEAD: &str = "insert into signed_head (site, size, root, note) values ($1, $2, $3, $4) \
     on conflict (site, size) do nothing";
 const KEPT: &str = "select size, root, note from signed_head where site = $1 order by size";
 const IS_KEPT: &str = "select count(*) from signed_head where site = $1 and size = $2";
 
 #[cfg(test)]
-pub(crate) const TEXTS: &[&str] = &[START, HEAD, LOCK_HEAD, PUT_HEAD, KEEP_HEAD, KEPT, IS_KEPT];
+pub(crate) const TEXTS: &[&str] = &[START, HEAD, LOCK_HEAD, KEEP_HEAD, KEPT, IS_KEPT];
 
 /// An empty log.
 pub(crate) async fn start(conn: &mut Conn<'_>, site: SiteNumber) -> Result<(), StoreError> {
@@ -86,24 +84,6 @@ pub(crate) async fn lock_head(conn: &mut Conn<'_>, site: SiteNumber) -> Result<H
     let row: Option<HeadRow> =
         on!(conn, |c| sqlx::query_as(LOCK_HEAD).bind(site.0).fetch_optional(c).await)?;
     head_of(site, row)
-}
-
-pub(crate) async fn put_head(
-    conn: &mut Conn<'_>,
-    site: SiteNumber,
-    head: &Head,
-) -> Result<(), StoreError> {
-    let changed = on!(conn, |c| sqlx::query(PUT_HEAD)
-        .bind(site.0)
-        .bind(signed(head.frontier.size())?)
-        .bind(head.frontier.to_bytes())
-        .bind(head.root.as_bytes().as_slice())
-        .bind(head.note.as_str())
-        .bind(head.last_recorded_at.0)
-        .execute(c)
-        .await?
-        .rows_affected());
-    if changed == 1 { Ok(()) } else { Err(StoreError::inconsistent("the head's row is gone")) }
 }
 
 /// Keeps a head that leaves the house.

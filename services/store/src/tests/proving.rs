@@ -7,9 +7,10 @@ use sqlx::QueryBuilder;
 
 use super::book::{Book, Ground};
 use crate::db::on;
-use crate::log::{self, Head};
+use crate::log::Head;
 use crate::proofs::Prover;
 use crate::tiles;
+use crate::writes::Writes;
 
 const LENGTH: u64 = 66_000;
 
@@ -47,7 +48,9 @@ async fn write_long_log(book: &Book) {
         note: String::new(),
         last_recorded_at: domain::stamp::Micros(0),
     };
-    log::put_head(&mut tx.conn(), number, &head).await.unwrap();
+    let mut writes = Writes::default();
+    writes.head(&head);
+    writes.send(&mut tx.conn(), number).await.unwrap();
     tx.commit().await.unwrap();
 }
 

@@ -9,6 +9,7 @@ use super::book::{Book, Ground, on_both};
 use crate::projections::Pending;
 use crate::rebuild::{self, Difference, How};
 use crate::rows::Select;
+use crate::writes::Writes;
 
 async fn first_row(book: &Book, table: &'static Table) -> Row {
     let mut held = book.db.reader().await.unwrap();
@@ -20,7 +21,9 @@ async fn apply(book: &Book, change: Change) {
     let mut pending = Pending::default();
     pending.add([change]).unwrap();
     let mut tx = book.db.begin().await.unwrap();
-    pending.write(&mut tx.conn(), book.site.number).await.unwrap();
+    let mut writes = Writes::default();
+    pending.write(&mut writes);
+    writes.send(&mut tx.conn(), book.site.number).await.unwrap();
     tx.commit().await.unwrap();
 }
 

@@ -8,6 +8,7 @@ use crate::rows::{Order, Select};
 
 const TEXTS: &[(&str, &[&str])] = &[
     ("blobs", crate::blobs::TEXTS),
+    ("commands", crate::commands::TEXTS),
     ("directory", crate::directory::TEXTS),
     ("founding", crate::founding::TEXTS),
     ("log", crate::log::TEXTS),

@@ -5,6 +5,7 @@ use std::sync::Arc;
 use std::sync::atomic::Ordering;
 use std::time::Duration;
 
+use domain::book::Desk;
 use domain::book::command::{Act, Amend, AmendTo, CorrectClock, DirectoryPerson, Enrol};
 use domain::ids::{BatchId, PersonId};
 use domain::ledger::tree::{Hash, TreeHead};
@@ -225,6 +226,32 @@ async fn two_programs_on_one_database_never_write_on_what_the_other_changed() {
     .await;
 }
 
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn what_another_program_changed_is_noticed_however_long_it_lay() {
+    on_both(async |book| {
+        acts::furnish(book).await;
+        let (seldom, often) = (batch(), BatchId(Uuid::from_u128(0xbb << 120)));
+        book.act(open_batch(often, "B2")).await.unwrap();
+        let other = Writers::new(
+            book.ground.serving().await,
+            tools(1, &book.clock, &book.committed, &book.fuse),
+        );
+        for round in 0..3 {
+            // Ours has both at hand; the other changes one of them; ours notices, and goes on with the second only.
+            book.act(reading(seldom, "3.5")).await.unwrap();
+            let theirs = book.command(reading(seldom, "3.6"));
+            other.submit(book.site.id, theirs).await.unwrap();
+            for _ in 0..2 {
+                book.act(reading(often, "3.7")).await.unwrap();
+            }
+            book.act(reading(seldom, "3.8")).await.unwrap();
+            assert_eq!(book.deep_check().await.fault, None, "round {round}");
+        }
+        other.close().await;
+    })
+    .await;
+}
+
 #[tokio::test]
 async fn a_clock_that_goes_back_stops_writing_until_somebody_says_so_in_the_book() {
     on_both(async |book| {
@@ -281,7 +308,10 @@ async fn readers_see_a_subject_as_the_counter_says() {
         let published = Arc::clone(book.writers.published());
         let load = async || {
             let mut held = book.db.reader().await.unwrap();
-            published.load(&mut held.conn(), &book.site, batch().into()).await.unwrap()
+            let (mut desk, subject) = (Desk::new(book.site.id), batch().into());
+            let (mut conn, wanted) = (held.conn(), [subject]);
+            published.lay_subjects(&mut conn, &book.site, &mut desk, &wanted).await.unwrap();
+            Arc::clone(desk.loaded(&subject).unwrap())
         };
         assert_eq!(load().await.n, 1);
         assert!(Arc::ptr_eq(&load().await, &load().await), "folded once");

@@ -33,8 +33,11 @@ pub(super) struct Bench {
     edge: Edge,
     /// The head that the latest group left: a log that still stands there needs no comparing with what was signed.
     left: Option<TreeHead>,
-    /// Subjects of earlier groups, and in which they were last needed. Good only if the locked counter agrees.
+    /// Subjects of earlier groups, and in which they were last needed. Good only if that was in this row of groups, or
+    /// if the locked counter agrees.
     shelf: HashMap<Subject, (Arc<Loaded>, u64)>,
+    /// The first of the latest groups between which nobody else has written.
+    row: u64,
     /// What the latest group had on the desk.
     touched: HashSet<Subject>,
     group: u64,
@@ -58,6 +61,7 @@ impl Bench {
             left: None,
             shelf: HashMap::new(),
             touched: HashSet::new(),
+            row: 0,
             group: 0,
         }
     }
@@ -73,6 +77,7 @@ impl Bench {
         let head = log::lock_head(conn, self.site.number).await?;
         let stands = head.tree_head();
         if self.left != Some(stands) {
+            self.row = self.group;
             let remembered = continuing::remembered(tools, &self.site)?;
             continuing::check(conn, &self.site, remembered, &stands).await?;
         }
@@ -196,20 +201,27 @@ impl Bench {
         self.lay_subjects(conn, sheet, &subjects).await
     }
 
-    /// Lays subjects on the desk: from the shelf if their counters agree, else from the log.
+    /// Lays subjects on the desk, from the shelf as far as it goes. What nobody else can have written to stands as it
+    /// lies there; for the rest the locked counters say what is to be read from the log.
     async fn lay_subjects(
         &mut self,
         conn: &mut Conn<'_>,
         sheet: &mut Sheet,
         subjects: &[Subject],
     ) -> Result<(), StoreError> {
-        let counters = log::counts(conn, self.site.number, subjects).await?;
+        let stands = |(_, group): &(Arc<Loaded>, u64)| self.row <= *group;
+        let asked: Vec<Subject> =
+            subjects.iter().filter(|s| !self.shelf.get(s).is_some_and(stands)).copied().collect();
+        let counters = log::counts(conn, self.site.number, &asked).await?;
         for subject in subjects {
-            let n = counters.get(subject).copied().unwrap_or_default();
-            match self.shelf.remove(subject) {
-                Some((loaded, _)) if loaded.n == n => self.desk.lend(*subject, loaded),
-                _ => read::lay_subject(conn, &self.site, &mut self.desk, *subject, n).await?,
-            }
+            let shelved = self.shelf.remove(subject);
+            let n = match &shelved {
+                Some((loaded, group)) if self.row <= *group => loaded.n,
+                _ => counters.get(subject).copied().unwrap_or_default(),
+            };
+            let shelved = shelved.map(|(loaded, _)| loaded);
+            let loaded = read::load(conn, &self.site, *subject, n, shelved).await?;
+            self.desk.lend(*subject, loaded);
             sheet.subjects.insert(*subject);
         }
         Ok(())

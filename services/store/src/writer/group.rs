@@ -4,22 +4,36 @@ use std::collections::hash_map::Entry;
 use std::collections::{BTreeMap, HashMap};
 use std::sync::Arc;
 use std::sync::atomic::Ordering;
+use std::time::Duration;
 
 use domain::book::command::Command;
 use domain::ids::SiteId;
 use domain::ledger::tree::TreeHead;
-use tokio::sync::mpsc;
+use tokio::sync::{OwnedSemaphorePermit, mpsc};
+use tokio::time::timeout;
 
 use super::bench::Bench;
 use super::{Answer, GROUP, Job, Shared, WriteError};
 use crate::error::chain;
-use crate::{Conn, StoreError, sites};
+use crate::{Conn, Held, StoreError, Tx, sites};
+
+/// How long a connection is kept for commands that may come: it need not be fetched anew for each of a row of them.
+const KEPT: Duration = Duration::from_millis(50);
+
+/// Groups in a row on one connection, after which others who wait for it have their turn.
+const IN_A_ROW: u32 = 256;
 
 /// Serves until nobody can send any more.
 pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
-    let mut room = Room { shared, benches: HashMap::new() };
+    let mut room = Room { shared, benches: HashMap::new(), kept: None };
     let mut group = Vec::with_capacity(GROUP);
-    while jobs.recv_many(&mut group, GROUP).await > 0 {
+    loop {
+        if room.kept.is_some() && timeout(KEPT, jobs.recv_many(&mut group, GROUP)).await.is_err() {
+            room.kept = None;
+        }
+        if group.is_empty() && jobs.recv_many(&mut group, GROUP).await == 0 {
+            break;
+        }
         room.serve(std::mem::take(&mut group)).await;
     }
 }
@@ -27,6 +41,16 @@ pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
 struct Room {
     shared: Arc<Shared>,
     benches: HashMap<SiteId, Bench>,
+    kept: Option<Line>,
+}
+
+/// A connection, to be kept after a group if there is a seat for it.
+struct Line {
+    held: Held,
+    /// Groups that were committed on it.
+    groups: u32,
+    /// Few writers may keep a connection, so that there are always some for readers.
+    seat: Option<OwnedSemaphorePermit>,
 }
 
 impl Room {
@@ -78,7 +102,41 @@ impl Room {
     }
 
     async fn commit(&mut self, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
-        let mut tx = self.shared.db.begin().await?;
+        let mut line = match self.kept.take() {
+            Some(line) => line,
+            None => self.line().await?,
+        };
+        let answers = match self.commit_on(&mut line, jobs).await {
+            // Lost since the last group; nothing was written on it yet.
+            Err(error) if line.groups > 0 && error.is_unavailable() => {
+                line = self.line().await?;
+                self.commit_on(&mut line, jobs).await?
+            }
+            outcome => outcome?,
+        }?;
+        line.groups += 1;
+        if line.seat.is_some() && line.groups < IN_A_ROW {
+            self.kept = Some(line);
+        }
+        Ok(answers)
+    }
+
+    async fn line(&self) -> Result<Line, StoreError> {
+        let seat = Arc::clone(&self.shared.seats).try_acquire_owned().ok();
+        Ok(Line { held: self.shared.db.writer().await?, groups: 0, seat })
+    }
+
+    /// One transaction on a connection. The outer error is that it could not be begun.
+    async fn commit_on(
+        &mut self,
+        line: &mut Line,
+        jobs: &[Job],
+    ) -> Result<Result<Vec<Answer>, WriteError>, StoreError> {
+        let tx = line.held.begin().await?;
+        Ok(self.commit_in(tx, jobs).await)
+    }
+
+    async fn commit_in(&mut self, mut tx: Tx<'_>, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
         let mut answers = BTreeMap::new();
         let mut heads = Vec::new();
         let mut entries = 0;

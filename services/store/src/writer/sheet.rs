@@ -16,6 +16,7 @@ use super::{Receipt, Tools, WriteError};
 use crate::log::{self, Head, KeptHead};
 use crate::projections::Pending;
 use crate::sites::Site;
+use crate::writes::Writes;
 use crate::{Conn, StoreError, blobs, directory, read, tiles};
 
 pub(super) struct Sheet {
@@ -119,7 +120,7 @@ impl Sheet {
         self.entries.len()
     }
 
-    /// Writes it all, with the heads that leave the house; the new head comes last.
+    /// Writes it all: entries, tables and the new head together, then what a group seldom has.
     pub(super) async fn write(
         &self,
         conn: &mut Conn<'_>,
@@ -127,8 +128,20 @@ impl Sheet {
         edge: &mut Edge,
         tools: &Tools,
     ) -> Result<TreeHead, WriteError> {
-        log::append(conn, site.number, &self.entries).await?;
-        self.pending.write(conn, site.number).await?;
+        let head = self.position.frontier.head();
+        let note =
+            (tools.sign)(&site.origin, head.size, &head.root).map_err(WriteError::Unsigned)?;
+        let row = Head {
+            frontier: self.position.frontier.clone(),
+            root: head.root,
+            note,
+            last_recorded_at: self.position.last_recorded_at,
+        };
+        let mut writes = Writes::default();
+        writes.entries(&self.entries);
+        self.pending.write(&mut writes);
+        writes.head(&row);
+        writes.send(conn, site.number).await?;
         for blob in &self.blobs {
             blobs::put(conn, site.number, blob).await?;
         }
@@ -143,16 +156,6 @@ impl Sheet {
             let note = (tools.sign)(&site.origin, size, &root).map_err(WriteError::Unsigned)?;
             log::keep_head(conn, site.number, &KeptHead { size, root, note }).await?;
         }
-        let head = self.position.frontier.head();
-        let note =
-            (tools.sign)(&site.origin, head.size, &head.root).map_err(WriteError::Unsigned)?;
-        let row = Head {
-            frontier: self.position.frontier.clone(),
-            root: head.root,
-            note,
-            last_recorded_at: self.position.last_recorded_at,
-        };
-        log::put_head(conn, site.number, &row).await?;
         Ok(head)
     }
 }
