@@ -1,7 +1,8 @@
 //! Asking the checks on a snapshot, outside the writer.
 
+use domain::book::Desk;
 use domain::book::assessing::{Prepared, Question, assess};
-use domain::book::command::Propose;
+use domain::book::command::{Propose, Stop};
 use store::writer::Receipt;
 
 use crate::caller::Caller;
@@ -44,7 +45,27 @@ impl House {
             actor: domain::ledger::entry::Actor::Person(caller.person),
         };
         // If this fails the writer finds the same fault, under the lock, and says so.
-        propose.prepared = self.assess(&caller, &question).await.ok().map(Box::new);
+        propose.prepared = self.prepare(&caller, &question).await.ok().map(Box::new);
         self.submit(asked(propose)).await
+    }
+
+    /// The same on what is at hand: the writer asks anew if anything has moved.
+    async fn prepare(&self, caller: &Caller, question: &Question) -> Result<Prepared, HouseError> {
+        let site = self.site(caller.site).await?;
+        let published = self.inner.writers.published();
+        let (mut desk, now) = (Desk::new(site.id), self.now());
+        loop {
+            match assess(&desk, question, now) {
+                Ok(prepared) => return Ok(prepared),
+                Err(Stop::Refused(refusal)) => return Err(HouseError::Refused(refusal)),
+                Err(Stop::Need(needs)) => {
+                    let unknown = published.lay_known(&site, &mut desk, needs);
+                    if !unknown.is_empty() {
+                        let mut held = self.inner.db.reader().await?;
+                        published.lay(&mut held.conn(), &site, &mut desk, &unknown).await?;
+                    }
+                }
+            }
+        }
     }
 }

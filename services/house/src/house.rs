@@ -4,7 +4,7 @@ use std::collections::HashMap;
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use domain::book::Desk;
-use domain::book::command::{Act, Command, Refusal, Stop};
+use domain::book::command::{Act, Command, Need, Refusal, Stop};
 use domain::book::subject::Subject;
 use domain::ids::{CommandId, SiteId};
 use domain::ledger::entry::{Actor, Via};
@@ -135,7 +135,12 @@ impl House {
     /// # Errors
     /// [`HouseError`].
     pub async fn local_now(&self, site: &Site) -> Result<Stamp, HouseError> {
-        let desk = self.desk(site, &[site.id.into()]).await?;
+        // A book's time zone is that of its founding, which is not amended: any state of the site knows it.
+        let mut desk = Desk::new(site.id);
+        let published = self.inner.writers.published();
+        if !published.lay_known(site, &mut desk, vec![Need::Subject(site.id.into())]).is_empty() {
+            desk = self.desk(site, &[site.id.into()]).await?;
+        }
         let zone = desk.site().ok().and_then(|s| s.founded.as_ref().map(|f| f.time_zone.clone()));
         Ok(Stamp::in_zone(self.now(), zone.as_deref().unwrap_or("UTC")))
     }
@@ -208,12 +213,16 @@ impl House {
         desk: &mut Desk,
         question: impl Fn(&Desk) -> Result<T, Stop>,
     ) -> Result<T, HouseError> {
-        let mut held = self.inner.db.reader().await?;
+        let mut reader = None;
         loop {
             match question(desk) {
                 Ok(answer) => return Ok(answer),
                 Err(Stop::Refused(refusal)) => return Err(HouseError::Refused(refusal)),
                 Err(Stop::Need(needs)) => {
+                    let held = match &mut reader {
+                        Some(held) => held,
+                        none => none.insert(self.inner.db.reader().await?),
+                    };
                     let published = self.inner.writers.published();
                     published.lay(&mut held.conn(), site, desk, &needs).await?;
                 }

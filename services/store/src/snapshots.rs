@@ -83,6 +83,22 @@ impl Published {
         Ok(())
     }
 
+    /// Lays on a desk what is at hand of what a question needs, however old; gives back the rest. An answer found on
+    /// it must be held against the counters before it counts.
+    pub fn lay_known(&self, site: &Site, desk: &mut Desk, needs: Vec<Need>) -> Vec<Need> {
+        let (states, rule_sets) = (self.states(), self.rule_sets());
+        let mut lay = |need: &Need| match need {
+            Need::Subject(subject) => states
+                .get(&(site.number, *subject))
+                .map(|kept| desk.lend(*subject, Arc::clone(&kept.loaded))),
+            Need::Blob(digest) => {
+                rule_sets.get(digest).map(|set| desk.lend_rule_set(digest, Arc::clone(set)))
+            }
+            Need::Code(..) | Need::Entry(_) => None,
+        };
+        needs.into_iter().filter(|need| lay(need).is_none()).collect()
+    }
+
     /// A subject as it stood at most so long ago, if it was read or written since.
     pub fn recent(&self, site: &Site, subject: Subject, within: Duration) -> Option<Arc<Loaded>> {
         let states = self.states();
