@@ -122,7 +122,7 @@ impl Home {
                       book = sqlite3.connect(sys.argv[1], timeout=30)\n\
                       book.executescript(sys.argv[2])\n\
                       book.commit()\n";
-        let mut python = Command::new("python3");
+        let mut python = python();
         python.args(["-c", script]).arg(self.file()).arg(text);
         outcome(python).expect_success();
     }
@@ -376,6 +376,15 @@ fn only_our_settings(command: &mut Command) {
         command.env_remove(format!("TALLYSTAVE_{name}"));
     }
     command.env_remove("TALLYSTAVE_SIMULATED_FROM");
+}
+
+/// Python with the modules that independent checkers import: the one that `deploy/install test` made, else the
+/// system's own.
+pub fn python() -> Command {
+    let made = concat!(env!("CARGO_MANIFEST_DIR"), "/../target/python/bin/python");
+    let named = std::env::var_os("TALLYSTAVE_PYTHON");
+    let made = || Path::new(made).exists().then(|| made.into());
+    Command::new(named.or_else(made).unwrap_or_else(|| "python3".into()))
 }
 
 /// The program's path: `TALLYSTAVE_PROGRAM` if it is set, or else built by cargo for the profile these tests were built

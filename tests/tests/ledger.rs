@@ -2,7 +2,7 @@
 #![expect(clippy::unwrap_used, reason = "a test that finds nothing to unwrap fails, as it should")]
 
 use std::io::Write as _;
-use std::process::{Command, Stdio};
+use std::process::Stdio;
 
 use base64::Engine as _;
 use base64::engine::general_purpose::STANDARD;
@@ -14,9 +14,9 @@ use tests::{Answer, Cellar, Engine, on_both_engines};
 /// Runs the independent checker on an export and gives whether it agrees, and what it says.
 fn check(export: &Value) -> (bool, String) {
     let script = concat!(env!("CARGO_MANIFEST_DIR"), "/independent/check_ledger.py");
-    let mut python = Command::new("python3");
+    let mut python = tests::program::python();
     python.arg(script).stdin(Stdio::piped()).stdout(Stdio::piped()).stderr(Stdio::piped());
-    let mut child = python.spawn().expect("python3");
+    let mut child = python.spawn().expect("Python");
     child.stdin.take().unwrap().write_all(export.to_string().as_bytes()).unwrap();
     let output = child.wait_with_output().unwrap();
     let said = String::from_utf8_lossy(&output.stdout).into_owned();

@@ -18,7 +18,7 @@ fn the_description_is_valid_openapi_and_the_same_served_and_printed() {
 
     let file = tempfile::NamedTempFile::new().unwrap();
     std::fs::write(file.path(), &served.bytes).unwrap();
-    let mut validator = Command::new("python3");
+    let mut validator = tests::program::python();
     validator.args(["-m", "openapi_spec_validator"]).arg(file.path());
     let judged = outcome(validator);
     let said = format!("PyPI openapi-spec-validator must be installed: {judged:?}");

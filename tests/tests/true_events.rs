@@ -2,7 +2,7 @@
 #![expect(clippy::unwrap_used, reason = "a test that finds nothing to unwrap fails, as it should")]
 
 use serde_json::Value;
-use tests::{Cellar, on_both_engines};
+use tests::{Answer, Cellar, on_both_engines};
 
 /// The legs of an addition as (holding, direction, base amount).
 fn legs(entry: &Value) -> Vec<(String, String, i64)> {
@@ -14,6 +14,25 @@ fn legs(entry: &Value) -> Vec<(String, String, i64)> {
 }
 
 on_both_engines! {
+    fn a_gravity_that_can_hardly_be_is_recorded_and_its_likely_cause_is_told(engine) {
+        let mut cellar = Cellar::simulated(engine);
+        let batch = cellar.open("B1", "3000", "L");
+        let findings = |answer: &Answer| answer.json()["entries"][0]["body"]["findings"].clone();
+        cellar.drive_to("2025-09-09T08:00:00-07:00");
+        assert_eq!(findings(&cellar.gravity(&batch, "1.0310")), Value::Null, "nothing odd");
+        cellar.drive_to("2025-09-10T08:00:00-07:00");
+        let odd = findings(&cellar.gravity(&batch, "1.0620"));
+        assert_eq!(odd.as_array().unwrap().len(), 1);
+        assert_eq!(odd[0]["rule"], "plausibility.gravity-rise");
+        assert_eq!(odd[0]["verdict"], "advise");
+        let sentence = odd[0]["sentence"].as_str().unwrap();
+        assert!(sentence.contains("1.0310 at 2025-09-09 08:00"), "{sentence}");
+        assert!(sentence.ends_with("were two digits swapped (1.0260)?"), "{sentence}");
+        let kept = cellar.caro.get(&format!("/v1/batches/{batch}/readings")).expect(200).items();
+        assert_eq!(kept[1]["reading"]["findings"], odd, "it stays with the reading");
+        cellar.deep_check();
+    }
+
     fn more_than_the_stock_is_recorded_and_the_lot_stands_at_nothing_not_below(engine) {
         let mut cellar = Cellar::simulated(engine);
         let lot = cellar.receive("DP-0412", "DAP", "10", "kg");
