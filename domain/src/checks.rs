@@ -19,6 +19,7 @@ mod finding;
 mod measure;
 mod need;
 pub(crate) mod number;
+pub mod plausibility;
 pub(crate) mod remedy;
 pub(crate) mod situation;
 mod stock;

@@ -38,6 +38,8 @@ pub enum Setting {
     OwnRefusalMinutes,
     /// Below this supply a ferment is expected to stick.
     LowSupplyMgL,
+    /// A gravity that rises by more than this, or ends lower than expected by more, is pointed out.
+    GravityRiseSg,
 }
 
 /// One row of the table of settings.
@@ -70,7 +72,7 @@ const fn row(
 }
 
 /// Every setting, in the order of [`Setting`]. Defaults are common practice of the site, not published numbers.
-static TABLE: [Definition; 14] = [
+static TABLE: [Definition; 15] = [
     row(
         Setting::LateEntryHours,
         "late_entry_hours",
@@ -168,6 +170,13 @@ static TABLE: [Definition; 14] = [
         ["50", "0", "140"],
         "mg N/L",
         "below this supply a ferment is expected to stick: not a dose to aim at",
+    ),
+    row(
+        Setting::GravityRiseSg,
+        "gravity_rise_sg",
+        ["0.002", "0.0005", "0.05"],
+        "SG",
+        "a gravity above the last one, or below the expected end, by more than this is pointed out as hardly possible",
     ),
 ];
 

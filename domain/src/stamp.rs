@@ -91,6 +91,11 @@ impl Stamp {
         Self { at, offset_minutes }
     }
 
+    /// Local day and minute, for sentences: `2025-09-15 08:00`.
+    pub fn minute(&self) -> String {
+        self.to_string().chars().take(16).map(|c| if c == 'T' { ' ' } else { c }).collect()
+    }
+
     /// The instant on a wall clock that far from Greenwich.
     pub const fn new(at: Micros, offset_minutes: i16) -> Self {
         Self { at, offset_minutes }

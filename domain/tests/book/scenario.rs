@@ -346,6 +346,22 @@ fn the_lots_hold_what_the_paper_leaves_in_them() {
     assert_eq!(cellar.booked_mass(holding) / 1_000_000, 180 + 750 + 900 + 900 + 900 + 151);
 }
 
+/// No other reading of the story is called odd.
+#[test]
+fn only_the_slip_is_called_odd() {
+    let mut cellar = Cellar::stocked();
+    let (must, wash) = play(&mut cellar);
+    for batch in [must.batch, wash.batch] {
+        let subject = Subject::new(SubjectKind::Batch, batch);
+        for entry in cellar.ledger.entries_of(subject, usize::MAX) {
+            if let Body::ReadingTaken(body) = body_of(&entry) {
+                let slip = entry.id == wash.swapped[0].id;
+                assert_eq!(body.findings.is_empty(), !slip, "{:?}", body.findings);
+            }
+        }
+    }
+}
+
 #[test]
 fn the_swapped_digits_of_a_reading_change_no_later_verdict() {
     let mut cellar = Cellar::stocked();
@@ -356,6 +372,14 @@ fn the_swapped_digits_of_a_reading_change_no_later_verdict() {
     let Body::EntryAmended(said) = body_of(amendment) else { panic!() };
     assert_eq!(said.target.id, wash.swapped[0].id);
     assert_eq!(said.reason, "slip shows 1.0465");
+    let Body::ReadingTaken(typed) = body_of(&wash.swapped[0]) else { panic!() };
+    assert_eq!(typed.findings.len(), 1);
+    assert_eq!(typed.findings[0].rule, "plausibility.gravity-rise");
+    assert_eq!(
+        typed.findings[0].sentence,
+        "Gravity 1.0645 is 0.0075 above the last one, 1.0570 at 2025-09-23 06:00, and no sugar is recorded since: \
+         were two digits swapped (1.0465)?"
+    );
 
     let mut straight = Cellar::stocked();
     play_must(&mut straight);

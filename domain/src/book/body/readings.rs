@@ -3,6 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::Late;
+use crate::checks::Finding;
 use crate::ids::{BatchId, HoldingId, InstrumentId};
 use crate::stamp::Stamp;
 
@@ -31,6 +32,9 @@ pub struct ReadingTaken {
     /// A remark.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub note: Option<String>,
+    /// What was odd about it when it was entered, with the likely cause, as it was shown.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub findings: Vec<Finding>,
     /// Entered later than the site allows; a laboratory result counts from when it was reported.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub late: Option<Late>,

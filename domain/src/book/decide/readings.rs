@@ -1,12 +1,20 @@
 //! Recording what was measured. Corrections are computed here, once, and kept with their method.
 
+use super::lots::zone;
 use super::{Deciding, ENGINE};
+use crate::book::assessing::settings_of;
+use crate::book::body::batches::ExpectedFinal;
 use crate::book::body::readings::{CorrectedGravity, Temperature};
 use crate::book::body::{Nitrogen, Reading, ReadingTaken};
 use crate::book::command::{Decision, Refusal, Stop, TakeReading, not_ahead};
 use crate::book::readings::{READABLE, readable};
+use crate::book::state::BatchState;
+use crate::checks::Finding;
+use crate::checks::plausibility::{self, Before, GravityRead};
 use crate::densimetry::{Scale, correct};
 use crate::nitrogen::{Ammonium, Yan};
+use crate::settings::Setting;
+use crate::stamp::Stamp;
 use crate::units::Decimal;
 
 /// The most values one entry holds.
@@ -44,6 +52,7 @@ pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTak
         sample: act.sample.clone(),
         laboratory: act.laboratory.clone(),
         nitrogen: nitrogen(&values),
+        findings: odd(it, batch, act, &values)?,
         late: it.late(
             act.reported_at.unwrap_or(act.taken_at),
             act.captured_at,
@@ -52,6 +61,43 @@ pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTak
         values,
         note: act.note.clone(),
     })
+}
+
+/// What is odd about the gravities, held against the batch as it was before.
+fn odd(
+    it: &Deciding<'_>,
+    batch: &BatchState,
+    act: &TakeReading,
+    values: &[Reading],
+) -> Result<Vec<Finding>, Stop> {
+    let at = act.taken_at.at;
+    let last = batch.gravities.iter().rev().find(|gravity| gravity.at < at);
+    let shown = match last {
+        Some(last) => Stamp::in_zone(last.at, &zone(it)?).minute(),
+        None => String::new(),
+    };
+    let before = last.map(|last| Before {
+        sg: last.sg,
+        at: &shown,
+        sugar_since: batch.ingredient_between(last.at, at),
+    });
+    let rise = settings_of(&it.desk.site()?.settings)?.number(Setting::GravityRiseSg);
+    let opened = batch.opened.as_ref().map(|(_, opened)| opened);
+    let expected_end = opened.and_then(|opened| opened.expected_final.as_ref()).and_then(end_sg);
+    let gravities = values.iter().filter_map(|value| {
+        let sg = value.corrected.as_ref()?.sg_20_20.parse().ok()?;
+        let scale = Scale::parse(&value.unit).ok()?;
+        let celsius = value.sample_temperature.as_ref().and_then(Temperature::celsius);
+        let (entered, celsius) = (value.value.as_str(), celsius.unwrap_or(20.0));
+        Some(GravityRead { entered, scale, celsius, sg, before, expected_end, rise })
+    });
+    Ok(gravities.flat_map(|read| plausibility::gravity(&read)).collect())
+}
+
+/// The gravity at which a batch is expected to end, 20/20 °C.
+fn end_sg(expected: &ExpectedFinal) -> Option<f64> {
+    let scale = Scale::parse(&expected.scale).ok()?;
+    Some(correct(expected.value.parse().ok()?, scale, 20.0).ok()?.sg_20_20)
 }
 
 /// One value, believed or refused with what is believed; a gravity also brought to 20 °C.

@@ -194,7 +194,7 @@ impl BatchState {
                 "yeast" => {
                     self.pitched_at = Some(self.pitched_at.map_or(at, |first| first.min(at)));
                 }
-                "fruit" | "sugar" | "base" => {
+                category if is_ingredient(category) => {
                     self.last_ingredient_at = self.last_ingredient_at.max(Some(at));
                 }
                 _ => {}
@@ -212,6 +212,20 @@ impl BatchState {
     /// The apparent extract it started from: the first gravity.
     pub fn original(&self) -> Option<Gravity> {
         self.gravities.first().copied()
+    }
+
+    /// Whether sugar, fruit or liquid went in after `from` and up to `until`.
+    pub(crate) fn ingredient_between(&self, from: Micros, until: Micros) -> bool {
+        let within = |at: Micros| from < at && at <= until;
+        let opened = self
+            .opened
+            .as_ref()
+            .is_some_and(|(at, body)| !body.ingredients.is_empty() && within(at.at));
+        opened
+            || self.additions().any(|(entry, body)| {
+                within(entry.occurred_at.at)
+                    && body.lines.iter().any(|line| is_ingredient(&line.category))
+            })
     }
 
     /// Additions with their bodies, by time.
@@ -250,6 +264,11 @@ impl BatchState {
             },
         ]
     }
+}
+
+/// What a batch is made of, beside yeast and what feeds or protects it.
+fn is_ingredient(category: &str) -> bool {
+    matches!(category, "fruit" | "sugar" | "base")
 }
 
 /// Inserts after everything that comes before it or with it.

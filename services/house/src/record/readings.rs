@@ -224,7 +224,8 @@ fn remark(body: &ReadingTaken) -> String {
     let nitrogen = body.nitrogen.as_ref().map(|found| {
         format!("assimilable nitrogen {} mg N/L: {}", tenth(&found.total_mg_l), found.method)
     });
-    [body.note.clone(), nitrogen].into_iter().flatten().collect::<Vec<_>>().join("; ")
+    let odd = body.findings.iter().map(|finding| format!("shown: {}", finding.sentence));
+    body.note.clone().into_iter().chain(nitrogen).chain(odd).collect::<Vec<_>>().join("; ")
 }
 
 /// A figure to a tenth, as the account has it.

@@ -2,7 +2,7 @@
 
 use serde_json::json;
 
-use super::stage::{BATCH_A, Events, when};
+use super::stage::{BATCH_A, Events, tell, when};
 
 /// Gravities at 20 °C and vessel temperatures.
 const READINGS: [(&str, &str, &str); 10] = [
@@ -136,6 +136,7 @@ fn swapped_digits(events: &mut Events) {
         let answer = stage.as_("ana")?.post(&path, &body)?;
         stage.note("swapped", &answer, "id")?;
         stage.say(&format!("{}  {BATCH_A}  gravity 1.0820 typed", when("2025-09-24T18:05")));
+        tell(&answer["entries"][0]["body"]);
         Ok(())
     });
     events.at("2025-09-24T18:48:00-07:00", |stage| {

@@ -203,8 +203,8 @@ impl Stage {
 }
 
 /// Prints what was found above information, with its remedy.
-fn tell(assessment: &Value) {
-    let findings = assessment["findings"].as_array().map(Vec::as_slice).unwrap_or_default();
+pub(super) fn tell(told: &Value) {
+    let findings = told["findings"].as_array().map(Vec::as_slice).unwrap_or_default();
     for finding in findings.iter().filter(|finding| finding["verdict"] != "clear") {
         let text = |value: &Value| value.as_str().unwrap_or_default().to_owned();
         println!("          {}: {}", text(&finding["verdict"]), text(&finding["sentence"]));
