@@ -26,6 +26,9 @@ pub const MAX_DEPTH: usize = 64;
 /// The largest integer that every JSON reader holds exactly, 2^53 − 1 (RFC 7493, section 2.2).
 pub const MAX_INTEGER: u64 = (1 << 53) - 1;
 
+/// Names of members that begin like this are read by the JSON library as other values than they are.
+const RESERVED: &str = "$serde_json::private::";
+
 /// Why a value or its bytes cannot stand in the ledger.
 #[derive(Clone, Debug, Eq, PartialEq, thiserror::Error)]
 pub enum NotCanonical {
@@ -66,6 +69,9 @@ pub enum Why {
     /// Text (or a member's name) with a control character other than the newline.
     #[error("the text holds a control character other than a newline")]
     ControlCharacter,
+    /// A member's name that the JSON library gives a meaning of its own: readers would not see what was hashed.
+    #[error("a member's name may not begin with {RESERVED}")]
+    ReservedName,
     /// Deeper than [`MAX_DEPTH`].
     #[error("nested deeper than {MAX_DEPTH}")]
     TooDeep,
@@ -226,6 +232,9 @@ fn put_object(members: &Map<String, Value>, depth: usize, out: &mut String) -> R
     for (i, (name, value)) in members.into_iter().enumerate() {
         if i > 0 {
             out.push(',');
+        }
+        if name.starts_with(RESERVED) {
+            return Err(Refusal::from(Why::ReservedName).under(name));
         }
         put_text(name, out).map_err(|why| Refusal::from(why).under(name))?;
         out.push(':');

@@ -15,7 +15,7 @@ use sqlx::{
 pub use self::server::Server;
 use crate::StoreError;
 
-/// How many statement texts a connection keeps prepared: one per table and power of two.
+/// How many statement texts a connection keeps prepared.
 const STATEMENTS: usize = 512;
 
 /// How long one waits for a free connection before the answer is "try later".

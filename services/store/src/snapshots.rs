@@ -2,7 +2,9 @@
 //!
 //! What was folded once is kept, and is valid only as long as its number equals the subject's counter in the
 //! database: so several programs on one database and failed commits cannot show a stale state. What has been written
-//! since is taken on top of it. Rule sets are kept by the digest of their text, and never change.
+//! since is taken on top of it. A failover that lost acknowledged entries shows when this instance next writes: the log
+//! does not continue what it signed, and all states are forgotten. Rule sets are kept by the digest of their text, and
+//! never change.
 
 use std::collections::HashMap;
 use std::collections::hash_map::Entry;
@@ -128,14 +130,25 @@ impl Published {
 
     /// Takes the writer's newer state of a subject that somebody reads, and of every person: what they may do must be
     /// known here at once.
-    pub(crate) fn renew(&self, site: SiteNumber, subject: Subject, loaded: &Arc<Loaded>) {
+    pub(crate) fn renew(
+        &self,
+        site: SiteNumber,
+        subject: Subject,
+        loaded: &Arc<Loaded>,
+        locked: Instant,
+    ) {
         let place = (site, subject);
         if subject.kind == SubjectKind::Person || self.states().contains_key(&place) {
-            self.keep(place, loaded, Instant::now());
+            self.keep(place, loaded, locked);
         }
     }
 
-    /// Keeps a state unless a newer one was kept meanwhile.
+    /// Forgets every state: the log turned out not to be the one that they were folded from.
+    pub(crate) fn clear(&self) {
+        self.states().clear();
+    }
+
+    /// Keeps a state unless one was kept that the database was asked for later.
     fn keep(&self, place: (SiteNumber, Subject), loaded: &Arc<Loaded>, known_at: Instant) {
         let mut states = self.states();
         if states.len() >= ROOM {
@@ -143,7 +156,7 @@ impl Published {
         }
         let newer = Kept { loaded: Arc::clone(loaded), known_at };
         match states.entry(place) {
-            Entry::Occupied(kept) if loaded.n < kept.get().loaded.n => {}
+            Entry::Occupied(kept) if known_at < kept.get().known_at => {}
             Entry::Occupied(mut kept) => {
                 kept.insert(newer);
             }

@@ -122,13 +122,14 @@ async fn check(
         // The next page is fetched while this one is checked.
         let next = log::entries(conn, site.number, last.seq + 1, PAGE);
         let (next, checked) = tokio::join!(next, read_all(page));
-        page = next?;
         for checked in checked {
             for tile in walk.take(checked?)? {
                 let stored = tiles::find(conn, site.number, tile.id()).await?;
                 walk.compare_tile(&tile, stored.as_ref())?;
             }
         }
+        // What is wrong with this page was told first.
+        page = next?;
     }
     walk.finish(&head)?;
     let stored = tiles::count(conn, site.number).await?;

@@ -17,6 +17,10 @@ use crate::sites::SiteNumber;
 /// Values in one message at most: a PostgreSQL statement takes 65,535, and one of SQLite 32,766.
 const MOST: usize = 30_000;
 
+/// The text of a message with at most so many values is kept prepared: small groups are alike, and large ones hardly
+/// ever have the same numbers of rows.
+const KEPT: usize = 1_000;
+
 /// Binds a value with the type of its column, so that an empty one has a type too.
 macro_rules! push_cell {
     ($values:expr, $kind:expr, $cell:expr) => {
@@ -161,6 +165,7 @@ async fn send(
 ) -> Result<(), StoreError> {
     let one_statement = matches!(conn, Conn::Postgres(_));
     let last = writes.len().saturating_sub(1);
+    let values: usize = writes.iter().map(Write::values).sum();
     on!(conn, |c| {
         let mut query = QueryBuilder::new("");
         for (index, write) in writes.iter().enumerate() {
@@ -180,7 +185,7 @@ async fn send(
                 push_write!(query, site, write);
             }
         }
-        query.build().execute(c).await?;
+        query.build().persistent(values <= KEPT).execute(c).await?;
     });
     Ok(())
 }

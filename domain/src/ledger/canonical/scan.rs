@@ -7,7 +7,7 @@ use std::borrow::Cow;
 
 use unicode_normalization::is_nfc;
 
-use super::{MAX_DEPTH, MAX_INTEGER};
+use super::{MAX_DEPTH, MAX_INTEGER, RESERVED};
 
 /// Whether these are the canonical bytes of a value.
 pub(super) fn is_canonical(bytes: &[u8]) -> bool {
@@ -79,7 +79,8 @@ impl<'a> Scan<'a> {
         let mut last: Option<Text<'a>> = None;
         loop {
             let name = self.string()?;
-            if last.is_some_and(|last| !last.is_before(&name)) {
+            // A name that reads as a reserved one only after its escapes does not exist: they have none.
+            if name.raw.starts_with(RESERVED) || last.is_some_and(|last| !last.is_before(&name)) {
                 return None;
             }
             last = Some(name);

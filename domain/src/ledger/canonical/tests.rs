@@ -117,6 +117,19 @@ fn control_characters_and_text_not_in_normal_form_are_refused() {
     }
 }
 
+/// The JSON library reads such an object as the value that its text says, so that what a reader sees would not be what a
+/// checker saw.
+#[test]
+fn a_name_with_a_meaning_of_its_own_is_refused() {
+    for name in ["$serde_json::private::RawValue", "$serde_json::private::Number"] {
+        let value = json!({ "body": { name: "{\"base\":1}" } });
+        assert_eq!(refused(&value), (format!("/body/{name}"), Why::ReservedName));
+        let bytes = format!("{{\"body\":{{\"{name}\":\"1\"}}}}");
+        assert!(!scan::is_canonical(bytes.as_bytes()));
+        assert!(verify(bytes.as_bytes()).is_err());
+    }
+}
+
 #[test]
 fn nesting_has_an_end() {
     let nested = |depth: usize| (0..depth).fold(json!(1), |inner, _| json!([inner]));
@@ -248,9 +261,32 @@ proptest! {
 
 /// Somewhere a few characters go and a piece comes that means something in JSON or in Unicode.
 fn edit() -> impl Strategy<Value = (proptest::sample::Index, usize, &'static str)> {
-    const PIECES: [&str; 24] = [
-        "", "", "\"", "\\", "\\n", "\\t", "\\u0041", "n", "\u{301}", "e\u{301}", "\u{7f}",
-        "\u{85}", "\n", " ", ",", ":", "{", "}", "[", "]", "0", "-", "null", "\"a\":1,",
+    const PIECES: [&str; 25] = [
+        "",
+        "",
+        "\"",
+        "\\",
+        "\\n",
+        "\\t",
+        "\\u0041",
+        "n",
+        "\u{301}",
+        "e\u{301}",
+        "\u{7f}",
+        "\u{85}",
+        "\n",
+        " ",
+        ",",
+        ":",
+        "{",
+        "}",
+        "[",
+        "]",
+        "0",
+        "-",
+        "null",
+        "\"a\":1,",
+        "$serde_json::private::",
     ];
     (any::<proptest::sample::Index>(), 0..3_usize, proptest::sample::select(&PIECES[..]))
 }

@@ -28,12 +28,12 @@ const HOST_PATIENCE: Duration = Duration::from_secs(2);
 
 /// Everything the service asks for is found by a key or in the order of an index. A plan made while a table was empty
 /// would read all of it, and is kept until the table is analysed.
-const BY_INDEX: (&str, &str) = ("enable_seqscan", "off");
+const BY_INDEX: &str = "set enable_seqscan = off";
 
 const IS_PRIMARY: &str = "select not pg_is_in_recovery()";
 
 #[cfg(test)]
-pub(crate) const TEXTS: &[&str] = &[IS_PRIMARY];
+pub(crate) const TEXTS: &[&str] = &[BY_INDEX, IS_PRIMARY];
 
 /// A pool of connections to whichever host is the primary.
 #[derive(Clone, Debug)]
@@ -55,11 +55,7 @@ impl Server {
     pub(super) async fn open(addresses: &str) -> Result<Self, StoreError> {
         let all = addresses
             .split(',')
-            .map(|url| {
-                Ok(PgConnectOptions::from_str(url)?
-                    .statement_cache_capacity(STATEMENTS)
-                    .options([BY_INDEX]))
-            })
+            .map(|url| Ok(PgConnectOptions::from_str(url)?.statement_cache_capacity(STATEMENTS)))
             .collect::<Result<Vec<_>, sqlx::Error>>()?;
         let primary = find_primary(&all).await?;
         let patience = if all.len() == 1 { PATIENCE } else { HOST_PATIENCE };
@@ -73,8 +69,10 @@ impl Server {
             })
             .after_connect(|conn, _| {
                 Box::pin(async move {
-                    let primary = is_primary(conn).await?;
-                    if primary { Ok(()) } else { Err(standby()) }
+                    if !is_primary(conn).await? {
+                        return Err(standby());
+                    }
+                    sqlx::query(BY_INDEX).execute(conn).await.map(drop)
                 })
             })
             .connect_lazy_with(primary);
@@ -93,30 +91,37 @@ impl Server {
         }
     }
 
-    /// A connection that has just been asked, whatever it was before.
+    /// A connection that has just been asked, whatever it was before: the dead ones of a server that was restarted are
+    /// passed over.
     pub(super) async fn acquire_primary(&self) -> Result<PoolConnection<Postgres>, StoreError> {
-        let turn = self.turn();
-        let mut held = self.acquire().await?;
-        if is_primary(&mut held).await.unwrap_or_default() {
-            return Ok(held);
+        for _ in 0..=CONNECTIONS {
+            let turn = self.turn();
+            let mut held = self.acquire().await?;
+            let answer = is_primary(&mut held).await;
+            if matches!(answer, Ok(true)) {
+                return Ok(held);
+            }
+            // Whether it could still say goodbye does not matter.
+            let _ = held.close().await;
+            if answer.is_ok() {
+                self.seek_primary(turn).await?;
+            }
         }
-        held.close_on_drop();
-        self.seek_primary(turn).await?;
-        self.acquire().await
+        Err(sqlx::Error::PoolTimedOut.into())
     }
 
     pub(super) async fn begin(
         &self,
         text: &'static str,
     ) -> Result<Transaction<'static, Postgres>, StoreError> {
-        let turn = self.turn();
-        match self.pool.begin_with(text).await.map_err(StoreError::from) {
-            Err(error) if error.is_unavailable() => {
-                self.seek_primary(turn).await?;
-                Ok(self.pool.begin_with(text).await?)
+        for _ in 0..CONNECTIONS {
+            let turn = self.turn();
+            match self.pool.begin_with(text).await.map_err(StoreError::from) {
+                Err(error) if error.is_unavailable() => self.seek_primary(turn).await?,
+                outcome => return outcome,
             }
-            outcome => outcome,
         }
+        Ok(self.pool.begin_with(text).await?)
     }
 
     /// The connections, for what this crate does not offer.

@@ -62,6 +62,55 @@ async fn commands_sent_again_after_a_power_cut_are_written_once() {
 }
 
 #[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn connections_that_the_server_ended_are_passed_over() {
+    let cluster = Arc::new(Cluster::start());
+    let name = cluster.create_database();
+    let book = Book::open(Ground::Server(Arc::clone(&cluster), name.clone())).await;
+    acts::begin(&book).await;
+    acts::furnish(&book).await;
+    for _ in 0..3 {
+        let mut held = Vec::new();
+        for _ in 0..6 {
+            held.push(book.db.reader().await.unwrap());
+        }
+        drop(held);
+        // The writer keeps a connection, and the pool has others that were used just now.
+        book.act(reading(batch(), "3.5")).await.unwrap();
+        let ending = Arc::clone(&cluster);
+        let database = name.clone();
+        tokio::task::spawn_blocking(move || {
+            let others = "select pg_terminate_backend(pid) from pg_stat_activity \
+                          where datname = current_database() and pid <> pg_backend_pid()";
+            ending.sql(&database, others);
+        })
+        .await
+        .unwrap();
+        book.act(reading(batch(), "3.6")).await.unwrap();
+    }
+    book.deep_check().await;
+}
+
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn steady_commands_leave_others_their_turn() {
+    let book = Arc::new(Book::open(Ground::file()).await);
+    acts::begin(&book).await;
+    acts::furnish(&book).await;
+    let steady = Arc::clone(&book);
+    let commands = tokio::spawn(async move {
+        loop {
+            steady.act(reading(batch(), "3.5")).await.unwrap();
+            tokio::time::sleep(Duration::from_millis(20)).await;
+        }
+    });
+    for _ in 0..2 {
+        tokio::time::sleep(Duration::from_millis(100)).await;
+        let tx = book.db.begin().await.unwrap();
+        tx.rollback().await.unwrap();
+    }
+    commands.abort();
+}
+
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
 async fn the_pool_follows_the_primary() {
     let (first, second) =
         (Cluster::start_with(&["fsync = off"]), Cluster::start_with(&["fsync = off"]));

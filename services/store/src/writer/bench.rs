@@ -3,6 +3,7 @@
 use std::collections::{HashMap, HashSet};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::Arc;
+use std::time::Instant;
 
 use domain::book::command::{Act, Command, Decision, Need, Refusal, Stop};
 use domain::book::subject::Subject;
@@ -108,10 +109,10 @@ impl Bench {
     }
 
     /// Hands the states of subjects that somebody reads to the readers. Called after the commit.
-    pub(super) fn publish(&self, published: &Published) {
+    pub(super) fn publish(&self, published: &Published, locked: Instant) {
         for subject in &self.touched {
             if let Some((loaded, _)) = self.shelf.get(subject) {
-                published.renew(self.site.number, *subject, loaded);
+                published.renew(self.site.number, *subject, loaded, locked);
             }
         }
     }

@@ -4,7 +4,7 @@ use std::collections::hash_map::Entry;
 use std::collections::{BTreeMap, HashMap};
 use std::sync::Arc;
 use std::sync::atomic::Ordering;
-use std::time::Duration;
+use std::time::{Duration, Instant};
 
 use domain::book::command::Command;
 use domain::ids::SiteId;
@@ -20,8 +20,8 @@ use crate::{Conn, Held, StoreError, Tx, sites};
 /// How long a connection is kept for commands that may come: it need not be fetched anew for each of a row of them.
 const KEPT: Duration = Duration::from_millis(50);
 
-/// Groups in a row on one connection, after which others who wait for it have their turn.
-const IN_A_ROW: u32 = 256;
+/// How long a connection is kept at most while commands keep coming: then others who wait for it have their turn.
+const ROW: Duration = Duration::from_secs(1);
 
 /// Serves until nobody can send any more.
 pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
@@ -47,8 +47,9 @@ struct Room {
 /// A connection, to be kept after a group if there is a seat for it.
 struct Line {
     held: Held,
-    /// Groups that were committed on it.
-    groups: u32,
+    since: Instant,
+    /// A group was committed on it.
+    proven: bool,
     /// Few writers may keep a connection, so that there are always some for readers.
     seat: Option<OwnedSemaphorePermit>,
 }
@@ -95,8 +96,11 @@ impl Room {
     /// One transaction. After a failure nothing that memory holds is believed.
     async fn attempt(&mut self, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
         let outcome = self.commit(jobs).await;
-        if outcome.is_err() {
+        if let Err(error) = &outcome {
             self.benches.clear();
+            if matches!(error, WriteError::Unsigned(_)) {
+                self.shared.published.clear();
+            }
         }
         outcome
     }
@@ -108,14 +112,15 @@ impl Room {
         };
         let answers = match self.commit_on(&mut line, jobs).await {
             // Lost since the last group; nothing was written on it yet.
-            Err(error) if line.groups > 0 && error.is_unavailable() => {
+            Err(error) if line.proven && error.is_unavailable() => {
+                drop(line);
                 line = self.line().await?;
                 self.commit_on(&mut line, jobs).await?
             }
             outcome => outcome?,
         }?;
-        line.groups += 1;
-        if line.seat.is_some() && line.groups < IN_A_ROW {
+        line.proven = true;
+        if line.seat.is_some() && line.since.elapsed() < ROW {
             self.kept = Some(line);
         }
         Ok(answers)
@@ -123,7 +128,8 @@ impl Room {
 
     async fn line(&self) -> Result<Line, StoreError> {
         let seat = Arc::clone(&self.shared.seats).try_acquire_owned().ok();
-        Ok(Line { held: self.shared.db.writer().await?, groups: 0, seat })
+        let held = self.shared.db.writer().await?;
+        Ok(Line { held, since: Instant::now(), proven: false, seat })
     }
 
     /// One transaction on a connection. The outer error is that it could not be begun.
@@ -154,20 +160,21 @@ impl Room {
         if heads.is_empty() {
             tx.rollback().await?;
         } else {
+            let locked = Instant::now();
             tx.commit().await.map_err(|error| WriteError::Unsure(Arc::new(error)))?;
-            self.announce(&heads, entries);
+            self.announce(&heads, entries, locked);
         }
         Ok(answers.into_values().collect())
     }
 
-    /// Says what is durable now.
-    fn announce(&self, heads: &[(SiteId, TreeHead)], entries: usize) {
+    /// Says what is durable now, and was the newest while the head was locked.
+    fn announce(&self, heads: &[(SiteId, TreeHead)], entries: usize, locked: Instant) {
         let counters = &self.shared.counters;
         counters.commits.fetch_add(1, Ordering::Relaxed);
         counters.entries.fetch_add(entries as u64, Ordering::Relaxed);
         for (site, head) in heads {
             if let Some(bench) = self.benches.get(site) {
-                bench.publish(&self.shared.published);
+                bench.publish(&self.shared.published, locked);
                 (self.shared.tools.committed)(&bench.site.origin, head);
             }
         }
