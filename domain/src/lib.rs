@@ -6,6 +6,7 @@
 
 pub mod book;
 pub mod checks;
+pub mod compute;
 pub mod densimetry;
 pub mod forecast;
 pub mod ids;

@@ -6,6 +6,7 @@ pub(crate) mod additions;
     reason = "the macro that describes query parameters names them by path"
 )]
 pub(crate) mod batches;
+pub(crate) mod calculations;
 pub(crate) mod deviations;
 pub(crate) mod doors;
 pub(crate) mod entries;

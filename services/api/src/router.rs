@@ -20,8 +20,8 @@ use crate::caller::{Caller, bearer};
 use crate::middleware::{Surroundings, surround};
 use crate::problem::{Kind, Problem};
 use crate::resources::{
-    additions, batches, deviations, doors, entries, ledger, lots, people, proposals, readings,
-    records, rule_sets, settings, things,
+    additions, batches, calculations, deviations, doors, entries, ledger, lots, people, proposals,
+    readings, records, rule_sets, settings, things,
 };
 
 /// Says how to sign requests.
@@ -128,6 +128,8 @@ fn routes() -> (Router<House>, Document) {
         .routes(routes!(deviations::list, deviations::open))
         .routes(routes!(deviations::show))
         .routes(routes!(deviations::resolve))
+        .routes(routes!(calculations::list))
+        .routes(routes!(calculations::calculate))
         .routes(routes!(ledger::head))
         .routes(routes!(ledger::entries))
         .routes(routes!(ledger::inclusion))

@@ -40,13 +40,31 @@ pub struct Strict<T> {
 impl<T: DeserializeOwned, S: Send + Sync> FromRequest<S> for Strict<T> {
     type Rejection = Problem;
 
-    async fn from_request(mut request: Request, state: &S) -> Result<Self, Problem> {
-        require_json(request.headers())?;
-        refuse_if_announced_too_large(request.headers())?;
-        DefaultBodyLimit::max(LARGEST_BODY).apply(&mut request);
-        let bytes = Bytes::from_request(request, state).await.map_err(|error| unread(&error))?;
-        parse(&bytes)
+    async fn from_request(request: Request, state: &S) -> Result<Self, Problem> {
+        parse(&body(request, state).await?)
     }
+}
+
+/// A body of plain JSON with numbers as they come, for computations, of which nothing is recorded.
+#[derive(Clone, Debug)]
+pub struct Plain(pub Value);
+
+impl<S: Send + Sync> FromRequest<S> for Plain {
+    type Rejection = Problem;
+
+    async fn from_request(request: Request, state: &S) -> Result<Self, Problem> {
+        let bytes = body(request, state).await?;
+        let read = serde_json::from_slice(&bytes).map(Self);
+        read.map_err(|error| Problem::at(Kind::NotReadable, "", error.to_string()))
+    }
+}
+
+/// The bytes of a JSON body that is not too large.
+async fn body<S: Send + Sync>(mut request: Request, state: &S) -> Result<Bytes, Problem> {
+    require_json(request.headers())?;
+    refuse_if_announced_too_large(request.headers())?;
+    DefaultBodyLimit::max(LARGEST_BODY).apply(&mut request);
+    Bytes::from_request(request, state).await.map_err(|error| unread(&error))
 }
 
 /// Reads a body that has arrived.

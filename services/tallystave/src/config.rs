@@ -30,6 +30,8 @@ pub(crate) enum Command {
     FoundingLink(FoundingLink),
     /// Says in the book that the server's clock was set back for good, so that writing can go on.
     CorrectClock(CorrectClock),
+    /// Computes what is asked, one JSON object a line on standard input; exits 1 if a line could not be computed.
+    Compute(Compute),
     /// Prints the description of the REST interface, OpenAPI 3.1.
     Openapi,
     /// Founds a simulated book and runs the main job on the invented demo scenario.
@@ -63,6 +65,16 @@ impl Book {
     pub(crate) fn secrets(&self) -> PathBuf {
         self.secrets.clone().unwrap_or_else(|| self.data.join("secrets"))
     }
+}
+
+/// See [`Command::Compute`].
+#[derive(Args, Clone, Debug)]
+pub(crate) struct Compute {
+    /// What to compute.
+    pub(crate) name: Option<String>,
+    /// Describes every computation with its members, units and source.
+    #[arg(long, conflicts_with = "name")]
+    pub(crate) list: bool,
 }
 
 /// See [`Command::Serve`].

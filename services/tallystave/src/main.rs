@@ -2,6 +2,7 @@
 #![forbid(unsafe_code)]
 
 mod check;
+mod compute;
 mod config;
 mod demo;
 mod serve;
@@ -52,6 +53,10 @@ async fn run(command: Command) -> anyhow::Result<()> {
         Command::Rebuild(rebuild) => check::rebuild(&rebuild).await,
         Command::FoundingLink(link) => founding_link(link).await,
         Command::CorrectClock(correct) => correct_clock(correct).await,
+        Command::Compute(compute) => {
+            anyhow::ensure!(compute::run(&compute)?, "not every line could be computed");
+            Ok(())
+        }
         Command::Openapi => {
             println!("{}", api::document().to_pretty_json()?);
             Ok(())
