@@ -142,6 +142,6 @@ impl Limits {
 }
 
 /// Coefficients from the constant upwards, at `x` (Horner's scheme).
-fn polynomial(coefficients: &[f64], x: f64) -> f64 {
+pub(crate) fn polynomial(coefficients: &[f64], x: f64) -> f64 {
     coefficients.iter().rev().fold(0.0, |sum, c| sum * x + c)
 }

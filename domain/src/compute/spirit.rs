@@ -21,6 +21,34 @@ pub(super) const ALL: &[Calculation] = &[
         run: alcoholic_strength,
     },
     Calculation {
+        name: "strength_convert",
+        meaning: "one strength on the other scales",
+        fields: &[
+            Field { name: "abv_20c", takes: STRENGTH },
+            Field { name: "mass_fraction", takes: "grams of ethanol per gram, 0 to 1" },
+            Field { name: "us_proof", takes: "degrees of proof at 60 °F, 0 to 200" },
+        ],
+        gives: &["abv_20c", "mass_fraction", "us_proof", "density_20c_kg_m3", "ethanol_g_l"],
+        source: METHOD,
+        run: strength_convert,
+    },
+    Calculation {
+        name: "pure_alcohol",
+        meaning: "litres of pure alcohol at 20 °C in a steel tank, or in what was weighed in air",
+        fields: &[
+            Field { name: "abv_20c", takes: STRENGTH },
+            Field { name: "temperature_c", takes: "the spirit's temperature, -20 to 40 °C" },
+            Field {
+                name: "volume_l",
+                takes: "litres as the tank, calibrated at 20 °C, indicates them",
+            },
+            Field { name: "weight_kg", takes: "kilograms weighed in air" },
+        ],
+        gives: &["pure_alcohol_l", "volume_20c_l"],
+        source: "OIML R 22, tables XI and XII",
+        run: pure_alcohol,
+    },
+    Calculation {
         name: "dilution",
         meaning: "water to bring a spirit to a lower strength",
         fields: &[
@@ -104,6 +132,62 @@ fn alcoholic_strength(given: &Given<'_>) -> Result<Found, Fault> {
         .number("mass_fraction", fraction)
         .number("abv_20c", by_volume(fraction))
         .note("of ethanol and water alone: sugar and other solids make it read too weak"))
+}
+
+/// Degrees of proof of a mass fraction: twice the volume per cent at 60 °F.
+fn us_proof(fraction: f64) -> f64 {
+    let of = |fraction: f64| {
+        let fraction = MassFraction(fraction.clamp(0.0, 1.0));
+        ethanol_water::density(fraction, Celsius::SIXTY_FAHRENHEIT).unwrap_or(f64::NAN)
+    };
+    200.0 * fraction * of(fraction) / of(1.0)
+}
+
+fn strength_convert(given: &Given<'_>) -> Result<Found, Fault> {
+    let (name, _) = given.one_of(&["abv_20c", "mass_fraction", "us_proof"])?;
+    let fraction = match name {
+        "abv_20c" => fraction_of_abv(abv(given, name)?),
+        "us_proof" => {
+            let proof = given.within(name, 0.0, 200.0)?;
+            fraction_where(|fraction| us_proof(fraction) - proof)
+        }
+        _ => given.within(name, 0.0, 1.0)?,
+    };
+    Ok(Found::by("OIML R 22; proof at 60 °F by the same formula")
+        .number("abv_20c", by_volume(fraction))
+        .number("mass_fraction", fraction)
+        .number("us_proof", us_proof(fraction))
+        .number("density_20c_kg_m3", density_20c(fraction))
+        .number("ethanol_g_l", fraction * density_20c(fraction))
+        .note("for duty the statutory tables prevail"))
+}
+
+/// Expansion of a steel tank, per K (OIML R 22, table XI).
+const STEEL: f64 = 36e-6;
+/// kg/m³ of air, and of the weights that a balance is adjusted with.
+const AIR: f64 = 1.2;
+const WEIGHTS: f64 = 8_000.0;
+
+fn pure_alcohol(given: &Given<'_>) -> Result<Found, Fault> {
+    let fraction = fraction_of_abv(abv(given, "abv_20c")?);
+    let celsius = given.within("temperature_c", -20.0, 40.0)?;
+    let density = ethanol_water::density(MassFraction(fraction), Celsius(celsius))
+        .map_err(|error| Fault::at("temperature_c", error))?;
+    let (name, amount) = given.one_of(&["volume_l", "weight_kg"])?;
+    if amount < 0.0 {
+        return Err(Fault::at(name, "give an amount not below zero"));
+    }
+    let (kilograms, method) = if name == "volume_l" {
+        let litres = amount * (1.0 + STEEL * (celsius - 20.0));
+        (litres * density / 1_000.0, "OIML R 22, table XI: steel tank, 36e-6 per K")
+    } else {
+        let buoyancy = 1.0 - AIR * (1.0 / WEIGHTS - 1.0 / density);
+        (amount * buoyancy, "OIML R 22, table XII: weighed in air of 1.2 kg/m³")
+    };
+    Ok(Found::by(method)
+        .number("pure_alcohol_l", kilograms * fraction / density_20c(1.0) * 1_000.0)
+        .number("volume_20c_l", kilograms / density_20c(fraction) * 1_000.0)
+        .note("ethanol and water alone; for duty the statutory tables prevail"))
 }
 
 fn dilution(given: &Given<'_>) -> Result<Found, Fault> {

@@ -27,6 +27,31 @@ const PUBLISHED: &[(&str, &str, &str, f64, f64)] = &[
         956.42,
         0.005,
     ),
+    // density.md E: 1,000 kg at 63.5 % vol and 17 °C; a tank of 1,250 L at 12 °C; A.2: strengths at 20 °C.
+    (
+        "pure_alcohol",
+        r#"{"abv_20c":63.5,"temperature_c":17,"weight_kg":1000}"#,
+        "pure_alcohol_l",
+        705.482,
+        0.002,
+    ),
+    (
+        "pure_alcohol",
+        r#"{"abv_20c":63.5,"temperature_c":17,"weight_kg":1000}"#,
+        "volume_20c_l",
+        1_110.995,
+        0.002,
+    ),
+    (
+        "pure_alcohol",
+        r#"{"abv_20c":63.5,"temperature_c":12,"volume_l":1250}"#,
+        "pure_alcohol_l",
+        799.182,
+        0.002,
+    ),
+    ("strength_convert", r#"{"abv_20c":40}"#, "mass_fraction", 0.332_996, 1e-6),
+    ("strength_convert", r#"{"mass_fraction":0.424257}"#, "abv_20c", 50.0, 1e-4),
+    ("strength_convert", r#"{"us_proof":200}"#, "abv_20c", 100.0, 1e-9),
     // The demo's hearts: 71.0 L at 67 % brought to 42 %; 0.52 mg/L at 42 % vol; 0.9 g/hL of pure alcohol at 67 %.
     ("dilution", r#"{"volume_l":71,"from_abv":67,"to_abv":42}"#, "water_l", 43.688, 0.002),
     (
@@ -153,6 +178,66 @@ fn every_row_of_molar_masses_comes_out() {
     assert!(rows > 10, "{rows} rows");
 }
 
+/// The rows of a table with their cells.
+fn rows(table: &'static str) -> impl Iterator<Item = Vec<&'static str>> {
+    let lines = table.lines().filter(|line| !line.starts_with('#')).skip(1);
+    lines.map(|line| line.split(',').collect())
+}
+
+#[test]
+fn every_row_of_must_and_refractometer_comes_out() {
+    let must =
+        include_str!(concat!(env!("CARGO_MANIFEST_DIR"), "/../tests/reference/must_sugar.csv"));
+    let number = |cell: &str| cell.parse::<f64>().unwrap();
+    let mut count = 0;
+    for row in rows(must) {
+        let found = computed("must_sugar", &format!("{{\"sucrose_percent\":{}}}", row[0])).unwrap();
+        let near = |name: &str, cell: &str, tolerance: f64| {
+            let value = found[name].as_f64().unwrap();
+            assert!((value - number(cell)).abs() <= tolerance, "{row:?}: {name} {value}");
+        };
+        near("sugar_g_l", row[3], number(row[6]));
+        near("density_kg_l", row[2], 0.0001);
+        near("sugar_g_kg", row[4], 0.1);
+        near("potential_abv_1683", row[5], 0.01);
+        let found = computed("refractive_index", &format!("{{\"n_d20\":{}}}", row[1])).unwrap();
+        let value = found["sucrose_percent"].as_f64().unwrap();
+        assert!((value - number(row[0])).abs() < 0.01, "{row:?}: {value}");
+        count += 1;
+    }
+    let index = include_str!(concat!(
+        env!("CARGO_MANIFEST_DIR"),
+        "/../tests/reference/refractive_brix.csv"
+    ));
+    for row in rows(index) {
+        let found = computed("refractive_index", &format!("{{\"n_d20\":{}}}", row[0])).unwrap();
+        let value = found["sucrose_percent"].as_f64().unwrap();
+        assert!((value - number(row[1])).abs() <= number(row[2]), "{row:?}: {value}");
+        count += 1;
+    }
+    assert!(count > 40, "{count} rows");
+}
+
+#[test]
+fn every_row_of_tanks_and_weights_comes_out() {
+    let table =
+        include_str!(concat!(env!("CARGO_MANIFEST_DIR"), "/../tests/reference/vessel_mass.csv"));
+    let mut count = 0;
+    for row in rows(table) {
+        let amount = match row[0] {
+            "la_per_100l_steel_tank" => "\"volume_l\":100",
+            "la_per_100kg_in_air" => "\"weight_kg\":100",
+            _ => continue,
+        };
+        let input = format!("{{\"abv_20c\":{},\"temperature_c\":{},{amount}}}", row[1], row[2]);
+        let value = computed("pure_alcohol", &input).unwrap()["pure_alcohol_l"].as_f64().unwrap();
+        let [expected, tolerance] = [row[4], row[6]].map(|cell| cell.parse::<f64>().unwrap());
+        assert!((value - expected).abs() <= tolerance, "{row:?}: {value}");
+        count += 1;
+    }
+    assert!(count > 10, "{count} rows");
+}
+
 #[test]
 fn storage_is_a_band_between_both_energies_and_refuses_spirits() {
     let at = |celsius: f64| {
@@ -206,7 +291,7 @@ fn names_are_unlike_and_each_has_a_source() {
         assert!(!calculation.source.is_empty() && !calculation.meaning.is_empty());
         assert!(!calculation.fields.is_empty() && !calculation.gives.is_empty());
     }
-    assert_eq!(names.len(), 19);
+    assert_eq!(names.len(), 23);
 }
 
 #[test]
