@@ -1,6 +1,6 @@
 //! Computations on the command line: one JSON object a line in, one result a line out, in order.
 
-use std::io::{BufRead, Write};
+use std::io::{BufRead, ErrorKind, Write};
 
 use anyhow::Context as _;
 use domain::compute::{Calculation, Fault, calculations};
@@ -11,16 +11,20 @@ use crate::config::Compute;
 /// Lists the computations, or computes line by line; gives whether every line could be computed.
 pub(crate) fn run(compute: &Compute) -> anyhow::Result<bool> {
     let mut out = std::io::stdout().lock();
-    match (&compute.name, compute.list) {
-        (None, true) => list(&mut out).map(|()| true).context("the list cannot be printed"),
+    let done = match (&compute.name, compute.list) {
+        (None, true) => list(&mut out).map(|()| true),
         (Some(name), false) => {
             let calculation = Calculation::of(name).with_context(|| {
                 format!("there is no computation {name:?}: `tallystave compute --list` names them")
             })?;
             each_line(calculation, std::io::stdin().lock(), &mut out)
-                .context("the lines cannot be read or printed")
         }
         _ => anyhow::bail!("name a computation, or ask for the --list"),
+    };
+    match done {
+        // Whoever read the output has had enough.
+        Err(error) if error.kind() == ErrorKind::BrokenPipe => Ok(true),
+        outcome => outcome.context("the lines cannot be read or printed"),
     }
 }
 
