@@ -4,19 +4,35 @@
 //! is a row of data with one pure function; changing the law changes a row, not code. It is not a scripting language.
 //! The list of a form's rules carries the form's name (`[[dose_limit]]`), so a slip is reported at its line.
 //!
+//! What an addition may do is asked by [`crate::checks::assess`]; everything else (release by market, claims, order of
+//! steps, gauges, entries in time, keeping) by the functions of [`release`]. [`check`] tells all faults of a site's own set.
+//!
 //! Each rule says how well it is known: **READ** in the source named, **FROM MEMORY** (works, and says so in its
 //! citation), or **unconfirmed** (ships switched off and says why). Local law prevails over anything written here.
 
+pub mod calendar;
+pub mod category_claim;
+mod check;
+pub mod contaminant_limit;
+pub mod content;
 pub mod dose_limit;
+pub mod entry_deadline;
 pub mod exact;
+pub mod gauge_required;
+pub mod held;
 pub mod level_band;
 pub mod lot_status;
 pub mod measurement_age;
 pub mod positive_list;
 pub mod preparation;
+pub mod product;
+pub mod release;
+pub mod residual_limit;
+pub mod retention;
+pub mod rows;
+pub mod sequence;
 pub mod timing_limit;
 
-use std::collections::BTreeSet;
 use std::fmt;
 
 use serde::Deserialize;
@@ -26,13 +42,23 @@ use crate::checks::Basis;
 use crate::settings::Setting;
 use crate::stamp::Micros;
 
+use self::category_claim::CategoryClaim;
+use self::contaminant_limit::ContaminantLimit;
 use self::dose_limit::DoseLimit;
+use self::entry_deadline::EntryDeadline;
+use self::gauge_required::GaugeRequired;
 use self::level_band::LevelBand;
 use self::lot_status::LotStatusRule;
 use self::measurement_age::MeasurementAge;
 use self::positive_list::PositiveList;
 use self::preparation::PreparationRule;
+use self::residual_limit::ResidualLimit;
+use self::retention::Retention;
+use self::rows::Rows;
+use self::sequence::Sequence;
 use self::timing_limit::TimingLimit;
+
+pub use self::check::{Located, check};
 
 /// How well a rule is known.
 #[derive(Clone, Copy, Debug, Deserialize, Eq, PartialEq)]
@@ -167,6 +193,42 @@ pub struct RuleSet {
     /// In what state.
     #[serde(default)]
     pub preparation: Vec<PreparationRule>,
+    /// What may be left in the product.
+    #[serde(default)]
+    pub residual_limit: Vec<ResidualLimit>,
+    /// What markets let it hold of what nobody put in.
+    #[serde(default)]
+    pub contaminant_limit: Vec<ContaminantLimit>,
+    /// What a name asks of what carries it.
+    #[serde(default)]
+    pub category_claim: Vec<CategoryClaim>,
+    /// What comes before what.
+    #[serde(default)]
+    pub sequence: Vec<Sequence>,
+    /// Until when an event is entered.
+    #[serde(default)]
+    pub entry_deadline: Vec<EntryDeadline>,
+    /// Where a quantity is measured.
+    #[serde(default)]
+    pub gauge_required: Vec<GaugeRequired>,
+    /// How long records are kept.
+    #[serde(default)]
+    pub retention: Vec<Retention>,
+}
+
+/// What all rules have, whatever their form.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct RuleView<'a> {
+    /// The form: the name of the list it stands in.
+    pub form: &'static str,
+    /// Its place in that list.
+    pub index: usize,
+    /// Its id.
+    pub id: &'a str,
+    /// The collected rows it stands on.
+    pub rows: &'a Rows,
+    /// Where it comes from.
+    pub source: &'a Source,
 }
 
 /// Why a rule set was not understood.
@@ -223,67 +285,30 @@ impl RuleSet {
         if set.form != 1 {
             return Err(RuleSetError::Form(set.form));
         }
-        set.coherent()?;
-        Ok(set)
+        match check::faults(&set).into_iter().next() {
+            Some(fault) => Err(RuleSetError::Rule { rule: fault.rule, reason: fault.reason }),
+            None => Ok(set),
+        }
     }
 
-    fn coherent(&self) -> Result<(), RuleSetError> {
-        let wrong = |rule: &str, reason| Err(RuleSetError::Rule { rule: rule.to_owned(), reason });
-        let plain = |c: char| c.is_ascii_lowercase() || c.is_ascii_digit() || c == '-';
-        if self.id.is_empty() || !self.id.chars().all(plain) {
-            return wrong(&self.id, "the set's id is made of small letters, digits and hyphens");
+    /// Every rule, switched off or not, in the order of the forms.
+    pub fn rules(&self) -> impl Iterator<Item = RuleView<'_>> {
+        let mut rules = Vec::new();
+        macro_rules! list {
+            ($($form:ident)*) => { $(
+                rules.extend(self.$form.iter().enumerate().map(|(index, rule)| RuleView {
+                    form: stringify!($form),
+                    index,
+                    id: &rule.id,
+                    rows: &rule.row,
+                    source: &rule.source,
+                }));
+            )* };
         }
-        if self.effective_to.is_some_and(|end| end <= self.effective_from) {
-            return wrong(&self.id, "effective_to must be later than effective_from");
-        }
-        let mut seen = BTreeSet::new();
-        for (id, source) in self.rules() {
-            if id.is_empty() || !id.chars().all(plain) {
-                return wrong(id, "an id is made of small letters, digits and hyphens");
-            }
-            if !seen.insert(id) {
-                return wrong(id, "this id is used twice in the set");
-            }
-            if source.status == Status::Unconfirmed && source.on {
-                return wrong(id, "an unconfirmed rule ships switched off: set on = false");
-            }
-            if !source.on && source.why.as_deref().is_none_or(str::is_empty) {
-                return wrong(id, "a rule that is switched off says why");
-            }
-        }
-        self.faults().next().map_or(Ok(()), |(id, reason)| wrong(id, reason))
-    }
-
-    /// Rules that could never speak, or that would compare unlike things.
-    fn faults(&self) -> impl Iterator<Item = (&str, &'static str)> {
-        let doses =
-            self.dose_limit.iter().filter_map(|rule| Some((rule.id.as_str(), rule.fault()?)));
-        let silent = "give it sugar_used or since_last_dose: as it stands it says nothing";
-        let times = self
-            .timing_limit
-            .iter()
-            .filter(|rule| rule.sugar_used.is_empty() && rule.since_last_dose.is_none())
-            .map(move |rule| (rule.id.as_str(), silent));
-        let levels = self
-            .level_band
-            .iter()
-            .filter(|rule| {
-                rule.bands.iter().any(|band| band.above.is_none() && band.below.is_none())
-            })
-            .map(|rule| (rule.id.as_str(), "each band has a bound above or below"));
-        doses.chain(times).chain(levels)
-    }
-
-    /// Every rule's id and source, switched off or not, in the order of the forms.
-    pub fn rules(&self) -> impl Iterator<Item = (&str, &Source)> {
-        let lists = self.positive_list.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let doses = self.dose_limit.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let times = self.timing_limit.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let levels = self.level_band.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let lots = self.lot_status.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let ages = self.measurement_age.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        let states = self.preparation.iter().map(|rule| (rule.id.as_str(), &rule.source));
-        lists.chain(doses).chain(times).chain(levels).chain(lots).chain(ages).chain(states)
+        list!(positive_list dose_limit timing_limit level_band lot_status measurement_age preparation);
+        list!(residual_limit contaminant_limit category_claim sequence);
+        list!(entry_deadline gauge_required retention);
+        rules.into_iter()
     }
 
     /// Whether it is in force at that instant.
@@ -316,11 +341,20 @@ pub fn digest(text: &str) -> String {
     })
 }
 
-/// The sets that come with the program: id and text.
+/// The sets that come with the program: id and text. That a set ships means that it can be adopted, not that it binds.
 pub fn shipped() -> &'static [(&'static str, &'static str)] {
     &[
         ("us-wine", include_str!("rules/sets/us-wine.toml")),
         ("common-practice", include_str!("rules/sets/common-practice.toml")),
+        ("us-distilling-material", include_str!("rules/sets/us-distilling-material.toml")),
+        ("us-spirits-plant", include_str!("rules/sets/us-spirits-plant.toml")),
+        ("us-beer", include_str!("rules/sets/us-beer.toml")),
+        ("eu-wine", include_str!("rules/sets/eu-wine.toml")),
+        ("fr-cider", include_str!("rules/sets/fr-cider.toml")),
+        ("uk-wine", include_str!("rules/sets/uk-wine.toml")),
+        ("ca-wine", include_str!("rules/sets/ca-wine.toml")),
+        ("eu-spirits", include_str!("rules/sets/eu-spirits.toml")),
+        ("contaminants", include_str!("rules/sets/contaminants.toml")),
     ]
 }
 

@@ -119,11 +119,15 @@ impl Cellar {
         self.ids.insert(code.to_owned(), id);
     }
 
-    /// Adopts every shipped rule set for production.
+    /// Adopts for production what binds an American wine cellar, and common practice.
     fn adopt_shipped(&self) {
         let from = self.now();
         for set in self.caro.get("/v1/rule-sets").expect(200).items() {
-            let path = format!("/v1/rule-sets/{}/adoptions", set["id"].as_str().expect("an id"));
+            let id = set["id"].as_str().expect("an id");
+            if !["us-wine", "common-practice"].contains(&id) {
+                continue;
+            }
+            let path = format!("/v1/rule-sets/{id}/adoptions");
             let body = json!({"standing": "production", "digest": set["digest"], "from": from});
             self.caro.post(&path, &body).expect(201);
         }

@@ -29,6 +29,7 @@ fn coverage(case: &Case<'_>) -> Option<Finding> {
                 rule.source.on
                     && rule.source.basis == Basis::Law
                     && rule.counts == Counts::Substance
+                    && rule.is_about(&case.situation.product_class)
             })
     };
     if case.binding.iter().copied().any(covers) {

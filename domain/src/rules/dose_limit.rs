@@ -6,6 +6,7 @@
 mod tally;
 
 use std::cmp::Ordering;
+use std::collections::BTreeMap;
 
 use serde::Deserialize;
 
@@ -15,7 +16,8 @@ use crate::checks::{Finding, Verdict};
 use crate::units::Dimension;
 
 use super::Source;
-use super::exact::{PARTS, Ratio, concentration, grouped};
+use super::exact::{Exact, PARTS, Ratio, concentration, grouped};
+use super::rows::Rows;
 
 use self::tally::Tally;
 
@@ -30,12 +32,26 @@ pub enum Counts {
     CarrierWater,
 }
 
+/// Over what the doses are summed.
+#[derive(Clone, Copy, Debug, Default, Deserialize, Eq, PartialEq)]
+#[serde(rename_all = "snake_case")]
+pub enum Over {
+    /// Every addition over the life of the batch.
+    #[default]
+    Life,
+    /// One treatment: the proposal alone. For a law that says "for each treatment".
+    Treatment,
+}
+
 /// A ceiling on the total of one substance or family over the life of a batch.
 #[derive(Clone, Debug, Deserialize, PartialEq)]
 #[serde(deny_unknown_fields)]
 pub struct DoseLimit {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// What it is called in a sentence.
     pub name: String,
     /// What is summed.
@@ -44,6 +60,15 @@ pub struct DoseLimit {
     /// The family: as named in compositions.
     #[serde(default)]
     pub substances: Vec<String>,
+    /// What one part of a substance counts as, where the law expresses the limit as something else; otherwise 1.
+    #[serde(default)]
+    pub counts_as: BTreeMap<String, Exact>,
+    /// Over what they are summed.
+    #[serde(default)]
+    pub over: Over,
+    /// The classes of product it is about, if not all of the set.
+    #[serde(default)]
+    pub product_classes: Vec<String>,
     /// The ceiling, exact.
     pub limit: Ratio,
     /// The metric figure printed beside it, which need not be the exact conversion.
@@ -80,6 +105,9 @@ impl Judged<'_> {
 
 impl DoseLimit {
     pub(crate) fn check(&self, case: &Case<'_>, mark: &Mark<'_>) -> Vec<Noticed> {
+        if !self.is_about(&case.situation.product_class) {
+            return Vec::new();
+        }
         let tally = Tally::of(self, case);
         let mut noticed = Vec::new();
         if let Some(lot) = &tally.not_weighed {
@@ -111,11 +139,19 @@ impl DoseLimit {
         Some(self.rest_parts(&Tally::of(self, case), volume_ul) / PARTS)
     }
 
+    /// Whether it is about this class of product, of those that its set binds.
+    pub(crate) fn is_about(&self, class: &str) -> bool {
+        self.product_classes.is_empty() || self.product_classes.iter().any(|name| name == class)
+    }
+
     /// Why the rule could never be judged.
     pub(super) fn fault(&self) -> Option<&'static str> {
         match (self.counts, self.limit.measure()) {
             (Counts::Substance, _) if self.substances.is_empty() => {
                 Some("name the substances that count")
+            }
+            _ if self.counts_as.keys().any(|name| !self.substances.contains(name)) => {
+                Some("counts_as names a substance that does not count")
             }
             (Counts::Substance, Dimension::Mass) | (Counts::CarrierWater, Dimension::Volume) => {
                 None
@@ -127,6 +163,9 @@ impl DoseLimit {
 
     /// Whether the dose stays within the limit.
     pub(crate) fn keeps(&self, case: &Case<'_>) -> bool {
+        if !self.is_about(&case.situation.product_class) {
+            return true;
+        }
         let total = Tally::of(self, case).total();
         case.strictest_volume_ul()
             .is_some_and(|volume_ul| self.limit.compare(total, volume_ul) != Ordering::Greater)

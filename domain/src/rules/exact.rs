@@ -63,17 +63,127 @@ impl TryFrom<Written> for Ratio {
     }
 }
 
+/// A decimal as an exact fraction in lowest terms, and as it was written: a strength, a density, a factor.
+#[derive(Clone, Debug, Deserialize, Eq, PartialEq)]
+#[serde(try_from = "String")]
+pub struct Exact {
+    fraction: Fraction,
+    text: String,
+}
+
+impl TryFrom<String> for Exact {
+    type Error = String;
+
+    fn try_from(text: String) -> Result<Self, String> {
+        let (above, below) = fraction_of(&text)?;
+        if above < 0 {
+            return Err(format!("{text:?} is below zero"));
+        }
+        Ok(Self { fraction: Fraction::new(above, below), text })
+    }
+}
+
+impl Exact {
+    /// Reads a plain decimal.
+    ///
+    /// # Errors
+    /// A sentence, if it is not one or is below zero.
+    pub fn parse(text: &str) -> Result<Self, String> {
+        Self::try_from(text.to_owned())
+    }
+
+    /// As written.
+    pub fn text(&self) -> &str {
+        &self.text
+    }
+
+    /// The number.
+    pub const fn fraction(&self) -> Fraction {
+        self.fraction
+    }
+
+    /// How it compares with another.
+    pub fn compare(&self, other: &Self) -> Ordering {
+        // 16 digits over at most 10^9, crossed, stay inside 127 bits.
+        self.fraction.compare(other.fraction).unwrap_or(Ordering::Greater)
+    }
+}
+
+/// An exact fraction in lowest terms; `below` is above zero.
+#[derive(Clone, Copy, Debug, Eq, PartialEq)]
+pub struct Fraction {
+    above: i128,
+    below: i128,
+}
+
+impl Fraction {
+    fn new(above: i128, below: i128) -> Self {
+        let common = greatest_common_divisor(above, below);
+        Self { above: above / common, below: below / common }
+    }
+
+    /// A decimal in a unit, in base units.
+    pub(super) fn in_unit(decimal: &str, code: &str) -> Result<(Self, Dimension), String> {
+        let (above, below, dimension) = exact(decimal, code)?;
+        Ok((Self::new(above, below), dimension))
+    }
+
+    /// The product; `None` if it is too fine or too large.
+    pub fn times(self, other: Self) -> Option<Self> {
+        let (left, right) =
+            (Self::new(self.above, other.below), Self::new(other.above, self.below));
+        let above = left.above.checked_mul(right.above)?;
+        Some(Self { above, below: left.below.checked_mul(right.below)? })
+    }
+
+    /// The quotient; `None` by zero, or if it is too fine or too large.
+    pub fn over(self, other: Self) -> Option<Self> {
+        (other.above > 0)
+            .then(|| self.times(Self { above: other.below, below: other.above }))
+            .flatten()
+    }
+
+    /// How it compares with another, by cross-multiplication; `None` if that is too large.
+    pub fn compare(self, other: Self) -> Option<Ordering> {
+        let left = self.above.checked_mul(other.below)?;
+        Some(left.cmp(&other.above.checked_mul(self.below)?))
+    }
+
+    /// `amount` times this, rounded up: where it counts towards a limit, nothing is dropped.
+    pub(super) fn of_rounded_up(self, amount: i128) -> i128 {
+        amount.saturating_mul(self.above).saturating_add(self.below - 1) / self.below
+    }
+
+    /// A whole number.
+    pub(super) const fn whole(number: i128) -> Self {
+        Self { above: number, below: 1 }
+    }
+
+    /// As a decimal with at most six digits after the point, cut off or rounded up.
+    pub(super) fn shown(self, up: bool) -> String {
+        let scaled = self.above.saturating_mul(1_000_000);
+        let value = scaled / self.below + i128::from(up && scaled % self.below != 0);
+        let text = format!("{}.{:06}", value / 1_000_000, value % 1_000_000);
+        text.trim_end_matches('0').trim_end_matches('.').to_owned()
+    }
+}
+
+/// A plain decimal as digits over a power of ten.
+fn fraction_of(decimal: &str) -> Result<(i128, i128), String> {
+    Decimal::parse(decimal).map_err(|error| error.to_string())?;
+    let places = decimal.split_once('.').map_or(0, |(_, fraction)| fraction.len());
+    let digits: i128 =
+        decimal.replace('.', "").parse().map_err(|_| format!("{decimal:?} is not a number"))?;
+    Ok((digits, (0..places).fold(1_i128, |power, _| power * 10)))
+}
+
 /// So that `term × parts × volume` (10^13 × 10^9 × 10^15) stays inside 127 bits.
 const LARGEST_TERM: i128 = 10_000_000_000_000;
 
 /// A decimal in a unit as a fraction of base units, unrounded. At most 15 digits × 10^12 over 10^9 × 1,000.
 fn exact(decimal: &str, code: &str) -> Result<(i128, i128, Dimension), String> {
-    Decimal::parse(decimal).map_err(|error| error.to_string())?;
+    let (digits, tens) = fraction_of(decimal)?;
     let unit = Unit::of(code).map_err(|error| error.to_string())?;
-    let places = decimal.split_once('.').map_or(0, |(_, fraction)| fraction.len());
-    let digits: i128 =
-        decimal.replace('.', "").parse().map_err(|_| format!("{decimal:?} is not a number"))?;
-    let tens = (0..places).fold(1_i128, |power, _| power * 10);
     let (above, below) = (digits * i128::from(unit.numerator), tens * i128::from(unit.denominator));
     let common = greatest_common_divisor(above, below);
     Ok((above / common, below / common, unit.dimension))
@@ -99,6 +209,11 @@ impl Ratio {
     /// The most that `volume_ul` may hold (base units × [`PARTS`]), rounded down.
     pub fn most(&self, volume_ul: i64) -> i128 {
         self.above * PARTS * i128::from(volume_ul) / self.below
+    }
+
+    /// The number itself, in µg/µL (g/L) or µL/µL.
+    pub fn fraction(&self) -> Fraction {
+        Fraction::new(self.above, self.below)
     }
 
     /// Whether it limits a mass or a volume.
@@ -133,7 +248,7 @@ fn thousandths(value: i128) -> String {
     format!("{}.{:03}", value / 1_000, value % 1_000)
 }
 
-fn spoken(code: &str) -> &str {
+pub(super) fn spoken(code: &str) -> &str {
     match code {
         "[lb_av]" => "lb",
         "[oz_av]" => "oz",

@@ -10,6 +10,7 @@ use crate::settings::{Setting, Settings};
 use crate::units::Decimal;
 
 use super::Source;
+use super::rows::Rows;
 
 /// Which level.
 #[derive(Clone, Copy, Debug, Deserialize, Eq, PartialEq)]
@@ -85,6 +86,9 @@ impl Band {
 pub struct LevelBand {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// Which level.
     pub level: Level,
     /// The bands.

@@ -6,6 +6,7 @@ use crate::checks::case::{Case, Mark, Noticed};
 use crate::checks::situation::{LotStatus, ProposedLine};
 use crate::checks::{Basis, Finding, Verdict};
 
+use super::rows::Rows;
 use super::{Source, Status};
 
 /// What the state of a lot means for its use.
@@ -14,6 +15,9 @@ use super::{Source, Status};
 pub struct LotStatusRule {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// The lot is on hold.
     pub held: Verdict,
     /// The lot is rejected.
@@ -29,6 +33,7 @@ impl LotStatusRule {
     pub(crate) fn house() -> Self {
         Self {
             id: "status".to_owned(),
+            row: Rows::default(),
             held: Verdict::Refuse,
             rejected: Verdict::Refuse,
             expired: Verdict::Refer,

@@ -6,6 +6,7 @@ use crate::checks::case::{Case, Mark, Noticed};
 use crate::checks::number::fixed;
 use crate::checks::{Finding, Verdict};
 
+use super::rows::Rows;
 use super::{SettingName, Source};
 
 /// Which measurement.
@@ -24,6 +25,9 @@ pub enum Measurement {
 pub struct MeasurementAge {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// Which measurement.
     pub measurement: Measurement,
     /// How old it may be.

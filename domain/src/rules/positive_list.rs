@@ -9,6 +9,7 @@ use crate::checks::situation::{Category, Line};
 use crate::checks::{Finding, Verdict};
 
 use super::Source;
+use super::rows::Rows;
 
 /// A category, as rule sets write it.
 #[derive(Clone, Copy, Debug, Deserialize, Eq, PartialEq)]
@@ -29,6 +30,9 @@ impl TryFrom<String> for CategoryName {
 pub struct PositiveList {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// Categories that the list is not about.
     #[serde(default)]
     pub exempt: Vec<CategoryName>,
@@ -40,6 +44,15 @@ pub struct PositiveList {
     /// Materials whose place on the list could not be settled, and why: pointed out, not refused.
     #[serde(default)]
     pub unsettled: BTreeMap<String, String>,
+    /// What an unsettled material means.
+    #[serde(default = "advise")]
+    pub unsettled_is: Verdict,
+    /// What a material that is not listed means, where the list read is not the whole list, or none was found.
+    #[serde(default = "refuse")]
+    pub unlisted_is: Verdict,
+    /// What to say of such a material in place of "is not on the list".
+    #[serde(default)]
+    pub statement: Option<String>,
     /// What to say more about a material that is not listed.
     #[serde(default)]
     pub remarks: BTreeMap<String, String>,
@@ -48,6 +61,14 @@ pub struct PositiveList {
     pub remedy: Option<String>,
     /// Where it comes from.
     pub source: Source,
+}
+
+const fn advise() -> Verdict {
+    Verdict::Advise
+}
+
+const fn refuse() -> Verdict {
+    Verdict::Refuse
 }
 
 impl PositiveList {
@@ -81,23 +102,28 @@ impl PositiveList {
         }
         if let Some(why) = self.unsettled.get(name) {
             let sentence = format!("{} ({}): {why}", spoken(name), line.lot_code);
-            return Some(mark.finding(&self.id, &self.source, Verdict::Advise, sentence));
+            return Some(mark.finding(&self.id, &self.source, self.unsettled_is, sentence));
         }
         Some(self.unlisted(line, name, mark))
     }
 
     fn unlisted(&self, line: &Line, name: &str, mark: &Mark<'_>) -> Finding {
-        let mut sentence = format!(
-            "{} ({}) is not on the list of materials that may be added ({}).",
-            spoken(name),
-            line.lot_code,
-            self.source.citation
-        );
+        let material = spoken(name);
+        let mut sentence = match &self.statement {
+            Some(statement) => format!("{material} ({}): {statement}", line.lot_code),
+            None => format!(
+                "{material} ({}) is not on the list of materials that may be added ({}).",
+                line.lot_code, self.source.citation
+            ),
+        };
         if let Some(remark) = self.remarks.get(name) {
             sentence.push(' ');
             sentence.push_str(remark);
         }
-        let finding = mark.finding(&self.id, &self.source, Verdict::Refuse, sentence);
+        let finding = mark.finding(&self.id, &self.source, self.unlisted_is, sentence);
+        if self.unlisted_is == Verdict::Clear {
+            return finding;
+        }
         finding.cured_by(self.remedy.as_deref().unwrap_or("Use a listed material."))
     }
 
@@ -106,7 +132,7 @@ impl PositiveList {
             "Nobody has said what {} ({}) is made of, and only listed materials may be added ({}).",
             line.material_name, line.lot_code, self.source.citation
         );
-        mark.finding(&self.id, &self.source, Verdict::Refuse, sentence)
+        mark.finding(&self.id, &self.source, self.unlisted_is.max(Verdict::Advise), sentence)
             .cured_by("Enter from its label what it is and what it contains, or use another lot.")
     }
 }

@@ -7,6 +7,7 @@ use crate::checks::case::{Case, Mark, Noticed};
 use crate::checks::situation::Preparation;
 
 use super::Source;
+use super::rows::Rows;
 
 /// What dry powder into an active ferment means.
 #[derive(Clone, Debug, Deserialize, PartialEq)]
@@ -14,6 +15,9 @@ use super::Source;
 pub struct PreparationRule {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// Powder goes straight into a ferment full of gas.
     pub powder_into_active: Verdict,
     /// Where it comes from.

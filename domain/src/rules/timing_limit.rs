@@ -10,6 +10,7 @@ use crate::checks::{Finding, Verdict};
 
 use super::dose_limit::Counts;
 use super::exact::grouped;
+use super::rows::Rows;
 use super::{SettingName, Source};
 
 /// A part of the sugar.
@@ -66,6 +67,9 @@ pub struct Gap {
 pub struct TimingLimit {
     /// Unique in the set.
     pub id: String,
+    /// The collected rows it stands on.
+    #[serde(default)]
+    pub row: Rows,
     /// Steps by the sugar used, gravest first.
     #[serde(default)]
     pub sugar_used: Vec<Step>,
@@ -123,7 +127,10 @@ impl TimingLimit {
             return step.remedy.clone();
         }
         let law = case.binding.iter().flat_map(|adopted| &adopted.set.dose_limit).find(|rule| {
-            rule.source.on && rule.counts == Counts::Substance && rule.substances.contains(&walls)
+            rule.source.on
+                && rule.counts == Counts::Substance
+                && rule.is_about(&case.situation.product_class)
+                && rule.substances.contains(&walls)
         });
         let Some((rule, rest)) = law.and_then(|rule| Some((rule, rule.rest(case)?))) else {
             return step.remedy.clone();

@@ -118,12 +118,16 @@ enum GravityAt {
 }
 
 fn adopted(standing: &Standing) -> Vec<AdoptedSet> {
-    let adopt = |(_, text): &(&str, &str)| AdoptedSet {
+    let here = |(id, _): &&(&str, &str)| ["us-wine", "common-practice"].contains(id);
+    shipped().iter().filter(here).map(|(_, text)| adopt(text, standing)).collect()
+}
+
+fn adopt(text: &str, standing: &Standing) -> AdoptedSet {
+    AdoptedSet {
         set: Arc::new(RuleSet::parse(text).unwrap()),
         digest: digest(text),
         standing: standing.clone(),
-    };
-    shipped().iter().map(adopt).collect()
+    }
 }
 
 impl Batch {
@@ -232,6 +236,13 @@ impl Batch {
 
     pub(super) fn without_sets(mut self) -> Self {
         self.sets.clear();
+        self
+    }
+
+    /// With that set alone.
+    pub(super) fn adopting(mut self, id: &str) -> Self {
+        let (_, text) = shipped().iter().find(|(shipped, _)| *shipped == id).unwrap();
+        self.sets = vec![adopt(text, &Standing::Production)];
         self
     }
 

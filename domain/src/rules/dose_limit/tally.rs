@@ -5,7 +5,7 @@ use crate::checks::case::Case;
 use crate::rules::exact::PARTS;
 use crate::units::Dimension;
 
-use super::{Counts, DoseLimit};
+use super::{Counts, DoseLimit, Over};
 
 /// How much of a line is the substance.
 #[derive(Clone, Copy, Debug, Eq, PartialEq)]
@@ -52,12 +52,8 @@ impl Tally {
 
     fn of_substance(rule: &DoseLimit, case: &Case<'_>) -> Self {
         let mut tally = Self::default();
-        for line in case.earlier_lines() {
-            match share(rule, line) {
-                Share::None => {}
-                Share::Parts(parts) | Share::Whole(parts) => tally.already += parts,
-                Share::NotWeighed => tally.not_weighed_earlier = true,
-            }
+        if rule.over == Over::Life {
+            tally.add_earlier(rule, case);
         }
         for (index, line) in case.proposed_lines().enumerate() {
             let share = share(rule, line);
@@ -74,6 +70,16 @@ impl Tally {
         tally
     }
 
+    fn add_earlier(&mut self, rule: &DoseLimit, case: &Case<'_>) {
+        for line in case.earlier_lines() {
+            match share(rule, line) {
+                Share::None => {}
+                Share::Parts(parts) | Share::Whole(parts) => self.already += parts,
+                Share::NotWeighed => self.not_weighed_earlier = true,
+            }
+        }
+    }
+
     /// So far and with the proposal.
     pub(super) const fn total(&self) -> i128 {
         self.already + self.proposed
@@ -81,12 +87,15 @@ impl Tally {
 }
 
 fn share(rule: &DoseLimit, line: &Line) -> Share {
-    let stated = rule.substances.iter().filter_map(|name| line.composition.get(name));
-    let stated = stated.copied().reduce(i64::saturating_add);
-    let (parts, whole) = match stated {
-        Some(parts) => (i128::from(parts), false),
-        None if line.names().any(|name| rule.substances.contains(&name)) => (PARTS, true),
-        None => return Share::None,
+    let stated = rule.substances.iter().filter_map(|name| {
+        line.composition.get(name).map(|parts| counted(rule, name, i128::from(*parts)))
+    });
+    let (parts, whole) = match stated.reduce(i128::saturating_add) {
+        Some(parts) => (parts, false),
+        None => match line.names().find(|name| rule.substances.contains(name)) {
+            Some(name) => (counted(rule, &name, PARTS), true),
+            None => return Share::None,
+        },
     };
     if parts <= 0 {
         return Share::None;
@@ -96,4 +105,9 @@ fn share(rule: &DoseLimit, line: &Line) -> Share {
     }
     let total = i128::from(line.amount.base()) * parts;
     if whole { Share::Whole(total) } else { Share::Parts(total) }
+}
+
+/// Parts of a substance as what the limit is expressed in.
+fn counted(rule: &DoseLimit, name: &str, parts: i128) -> i128 {
+    rule.counts_as.get(name).map_or(parts, |factor| factor.fraction().of_rounded_up(parts))
 }
