@@ -311,6 +311,21 @@ impl RuleSet {
         rules.into_iter()
     }
 
+    /// A rule's number with its unit, if it is one number.
+    pub fn number_of(&self, rule: &RuleView<'_>) -> Option<String> {
+        let index = rule.index;
+        match rule.form {
+            "dose_limit" => Some(self.dose_limit.get(index)?.limit.text().to_owned()),
+            "residual_limit" => Some(self.residual_limit.get(index)?.limit.text().to_owned()),
+            "contaminant_limit" => Some(self.contaminant_limit.get(index)?.limit.text().to_owned()),
+            "entry_deadline" => {
+                Some(format!("{} business days", self.entry_deadline.get(index)?.business_days))
+            }
+            "retention" => Some(format!("{} years", self.retention.get(index)?.years)),
+            _ => None,
+        }
+    }
+
     /// Whether it is in force at that instant.
     pub fn in_force(&self, at: Micros) -> bool {
         self.effective_from.start() <= at && self.effective_to.is_none_or(|end| at < end.start())

@@ -55,6 +55,20 @@ pub enum Basis {
     Model,
 }
 
+impl Basis {
+    /// The words used in JSON and rule sets.
+    pub const fn name(self) -> &'static str {
+        match self {
+            Self::Law => "law",
+            Self::Guidance => "guidance",
+            Self::Voluntary => "voluntary",
+            Self::CommonPractice => "common practice",
+            Self::SiteSetting => "site setting",
+            Self::Model => "model",
+        }
+    }
+}
+
 /// What would remove a finding.
 #[derive(Clone, Debug, Deserialize, Eq, PartialEq, Serialize)]
 #[serde(deny_unknown_fields)]

@@ -30,6 +30,8 @@ pub(crate) enum Command {
     FoundingLink(FoundingLink),
     /// Says in the book that the server's clock was set back for good, so that writing can go on.
     CorrectClock(CorrectClock),
+    /// Lists the shipped rule sets: each rule with its number, source, and whether it works.
+    Rules(Rules),
     /// Computes what is asked, one JSON object a line on standard input; exits 1 if a line could not be computed.
     Compute(Compute),
     /// Prints the description of the REST interface, OpenAPI 3.1.
@@ -65,6 +67,27 @@ impl Book {
     pub(crate) fn secrets(&self) -> PathBuf {
         self.secrets.clone().unwrap_or_else(|| self.data.join("secrets"))
     }
+}
+
+/// See [`Command::Rules`].
+#[derive(Args, Clone, Debug)]
+pub(crate) struct Rules {
+    /// Only this set.
+    #[arg(long)]
+    pub(crate) set: Option<String>,
+    /// Something else than listing.
+    #[command(subcommand)]
+    pub(crate) command: Option<RulesCommand>,
+}
+
+/// What else is done with rule sets.
+#[derive(Clone, Debug, Subcommand)]
+pub(crate) enum RulesCommand {
+    /// Reads a site's own rule set and tells every fault with its line and column; exits 1 if there is one.
+    Check {
+        /// The TOML file.
+        file: PathBuf,
+    },
 }
 
 /// See [`Command::Compute`].

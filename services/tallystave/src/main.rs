@@ -5,6 +5,7 @@ mod check;
 mod compute;
 mod config;
 mod demo;
+mod rules;
 mod serve;
 
 use std::process::ExitCode;
@@ -53,6 +54,7 @@ async fn run(command: Command) -> anyhow::Result<()> {
         Command::Rebuild(rebuild) => check::rebuild(&rebuild).await,
         Command::FoundingLink(link) => founding_link(link).await,
         Command::CorrectClock(correct) => correct_clock(correct).await,
+        Command::Rules(rules) => rules::run(&rules),
         Command::Compute(compute) => {
             anyhow::ensure!(compute::run(&compute)?, "not every line could be computed");
             Ok(())
