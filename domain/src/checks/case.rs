@@ -1,5 +1,6 @@
 //! One proposal in one situation, with what every rule asks about it computed once.
 
+use crate::rules::contaminant_limit::covers;
 use crate::rules::timing_limit::Carries;
 use crate::rules::{RuleName, Source};
 use crate::settings::Setting;
@@ -181,7 +182,9 @@ fn binding<'a>(situation: &'a Situation<'_>, proposed: &Proposed) -> Vec<&'a Ado
     let binds = |adopted: &&AdoptedSet| {
         let here = match &adopted.standing {
             Standing::Production => adopted.set.binds_premises(&situation.premises_kind),
-            Standing::Market { market } => situation.destinations.contains(market),
+            Standing::Market { market } => {
+                situation.destinations.iter().any(|to| covers(market, to))
+            }
         };
         here && adopted.set.binds_class(&situation.product_class)
             && adopted.set.in_force(proposed.planned_at)

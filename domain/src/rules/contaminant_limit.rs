@@ -79,7 +79,7 @@ const UNION: [&str; 27] = [
 ];
 
 /// Whether what holds in `here` holds in `market`: the same, a part of it, or a member of it.
-pub(super) fn covers(here: &str, market: &str) -> bool {
+pub(crate) fn covers(here: &str, market: &str) -> bool {
     let country = market.split_once('-').map_or(market, |(country, _)| country);
     here == market || here == country || (here == "EU" && UNION.contains(&country))
 }

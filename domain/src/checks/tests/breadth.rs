@@ -139,3 +139,14 @@ fn memory_is_marked_and_the_unconfirmed_is_silent() {
     let answer = ask(&cider, vec![pure("thiamine", "100")]);
     assert!(answer.findings.iter().all(|finding| finding.rule != "fr-cider.thiamine"));
 }
+
+/// What a province is sold under binds what is meant for it: the batch is meant for a province of Canada.
+#[test]
+fn a_set_of_a_market_binds_what_is_meant_for_a_part_of_it() {
+    let lines = || vec![dap("DP-0412", "3000")];
+    let rule = "us-wine.ammonium-phosphate";
+    let told = ask(&Batch::must().for_market("CA"), lines());
+    assert_eq!(found(&told, rule).verdict, Verdict::Refer);
+    let told = ask(&Batch::must().for_market("CA-QC"), lines());
+    assert!(told.findings.iter().all(|finding| finding.rule != rule));
+}

@@ -297,7 +297,7 @@ impl Batch {
             sets: &self.sets,
             premises_kind: self.premises.to_owned(),
             product_class: self.class.clone(),
-            destinations: vec!["US".to_owned(), "EU".to_owned()],
+            destinations: ["US", "EU", "CA-ON"].map(str::to_owned).to_vec(),
             liquid_present_ul: self.volume_ul.0,
             liquid_planned_ul: self.volume_ul.1,
             sugar_g_l: self.sugar,

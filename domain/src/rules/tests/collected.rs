@@ -267,3 +267,27 @@ fn claims_ask_what_was_collected() {
     let sugar = positive_list::CategoryName(crate::checks::Category::Sugar);
     assert!(fruit.barred.contains(&sugar));
 }
+
+/// Strength and sweetness at sale stand in the rows of a name, or in the notes that list the other names.
+#[test]
+fn what_claims_ask_at_sale_is_in_their_rows() {
+    let rows = collected();
+    let sets = sets();
+    let spirits = sets.iter().find(|set| set.id == "eu-spirits").unwrap();
+    let mut held = 0;
+    for claim in &spirits.category_claim {
+        let texts: Vec<&str> = claim
+            .row
+            .ids()
+            .flat_map(|id| [rows[id]["limit_value"].as_str(), rows[id]["note"].as_str()])
+            .collect();
+        for asked in claim.sale_at_least.iter().chain(&claim.sweetening_at_most) {
+            let none =
+                asked.text() == "0" && texts.iter().any(|text| text.contains("no sweetening"));
+            let stands = texts.iter().any(|text| numbers(text).contains(&asked.text()));
+            assert!(none || stands, "{}: {}", claim.id, asked.text());
+            held += 1;
+        }
+    }
+    assert_eq!(held, 20);
+}
