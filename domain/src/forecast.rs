@@ -16,7 +16,7 @@
 //! - **before the first** all that is known is that less was used.
 //!
 //! # The band
-//! 90 % of the judgement, made of: the reading error, enlarged if readings went backwards; what growth still leaves open; the
+//! 90 % of the judgement, made of: the error of the reading and of the original extract, enlarged if readings went backwards; what growth still leaves open; the
 //! uncertainty of the speed, enlarged if it changed much lately; and how far ahead the time lies. Uncertain progress is a
 //! factor, never negative.
 //!
@@ -128,7 +128,8 @@ pub enum Basis {
     BeforeFirstReading,
     /// The time lies between two readings, or at one.
     BetweenReadings,
-    /// The time lies ahead of the last of several readings.
+    /// The time lies ahead of the last of several readings. As long as they differ by less than their error there is no
+    /// speed either.
     AheadOfReadings,
     /// There is one reading and no speed: the band is that of any fermentation.
     AheadOfOneReading,
@@ -184,6 +185,8 @@ pub struct Course {
     points: Vec<Point>,
     /// Standard deviation of one reading's fraction.
     sd: f64,
+    /// That of the original extract, as a fraction of the sugar.
+    origin_sd: f64,
     speed: Speed,
 }
 
@@ -207,7 +210,7 @@ impl Course {
         let points = monotone::never_falling(&raw);
         let sd = span.reading_sd().hypot(monotone::disagreement(&raw, &points));
         let speed = Speed::at_the_last(&points, sd);
-        Some(Self { points, sd, speed })
+        Some(Self { points, sd, origin_sd: span.reading_sd().min(1.0 / LARGEST_SCORE), speed })
     }
 
     /// The fraction used at a time on the readings' clock; `None` for a time that is not a number.
@@ -242,22 +245,27 @@ impl Course {
     }
 
     fn ahead(&self, last: &Point, hours: f64) -> FractionForecast {
-        // One reading does not say whether there is any growth left to wait for.
-        let (basis, growth) = match self.points.len() {
-            1 => (Basis::AheadOfOneReading, growth_left(last.fraction)),
-            _ => (Basis::AheadOfReadings, growth_doubt(last.fraction)),
+        let basis = match self.points.len() {
+            1 => Basis::AheadOfOneReading,
+            _ => Basis::AheadOfReadings,
         };
+        let progress = self.speed.per_hour * hours;
         let law = Law::Ahead {
             last: self.level(last),
-            growth,
-            progress: self.speed.per_hour * hours,
+            growth: growth_doubt(last.fraction),
+            skipped: self.speed.skipped(growth_left(last.fraction), progress),
+            progress,
             doubt: self.speed.doubt(hours),
+            together: self.speed.with_level,
         };
         FractionForecast::new(basis, law)
     }
 
+    /// A reading with its own error and that of the original extract, which was read in the same way: an error e there shifts
+    /// the fraction f by e (1 − f).
     fn level(&self, point: &Point) -> Level {
-        Level { fraction: point.fraction, sd: self.sd }
+        let of_origin = self.origin_sd * (1.0 - point.fraction).clamp(0.0, 1.0);
+        Level { fraction: point.fraction, sd: self.sd.hypot(of_origin) }
     }
 }
 
@@ -288,8 +296,9 @@ enum Law {
     Before { first: Level },
     /// From one reading to the next, along a line that bows within the step.
     Between { from: Level, to: Level, share: f64, bow: f64 },
-    /// Beyond the last reading: its error, the doubt of growth and a log-normal progress, combined as independent.
-    Ahead { last: Level, growth: f64, progress: f64, doubt: f64 },
+    /// Beyond the last reading: its error, with the doubt of growth and what of growth may be over unseen, and a
+    /// log-normal progress; `together` is their correlation, from 0 to 1.
+    Ahead { last: Level, growth: f64, skipped: f64, progress: f64, doubt: f64, together: f64 },
 }
 
 impl Law {
@@ -304,12 +313,13 @@ impl Law {
                 let (start, end) = (from.clock(score), to.clock(score));
                 start + (end - start) * bent
             }
-            Self::Ahead { last, growth, progress, doubt } => {
-                let of_level = last.clock(score) - last.clock(0.0);
-                let of_growth = score * growth;
-                let of_progress = progress * (score * doubt).exp_m1();
-                let off = of_level.hypot(of_growth).hypot(of_progress).copysign(score);
-                last.clock(0.0) + progress + off
+            Self::Ahead { last, growth, skipped, progress, doubt, together } => {
+                let of_level = (last.clock(score) - last.clock(0.0)).hypot(score * growth);
+                let of_level = of_level.hypot(score.max(0.0) * skipped);
+                let of_progress = (progress * (score * doubt).exp_m1()).abs();
+                let both = 2.0 * together * of_level * of_progress;
+                let off = (of_level.powi(2) + both + of_progress.powi(2)).sqrt();
+                last.clock(0.0) + progress + off.copysign(score)
             }
         }
     }

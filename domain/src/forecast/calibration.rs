@@ -19,8 +19,9 @@ use cellar::{Batch, Dice};
 use figures::Figures;
 use kinetics::{Change, Ferment, Model, Trajectory};
 
-/// Never used while the forecast's figures were chosen.
-const TEST_SEEDS: [u64; 3] = [101, 102, 103];
+/// Never used while the forecast's figures were chosen; three others, which had been looked at between two versions, were
+/// given up for these.
+const TEST_SEEDS: [u64; 3] = [201, 202, 203];
 /// Batches of one seed.
 const BATCHES: usize = 200;
 
@@ -148,7 +149,27 @@ fn beers_are_forecast_with_a_band_that_holds_but_too_slowly() {
     assert!(figures.half_held.share() >= 0.85 && figures.later_held.share() >= 0.80);
 }
 
-/// The two speeds at which the clock is fitted: it runs evenly once growth is over.
+/// Also early on, when readings hardly differ from one another, the next day falls into the band; the band is wide then.
+#[test]
+fn the_next_day_falls_into_the_band_from_the_second_reading_on() {
+    let mut held = figures::Share::default();
+    for batch in cellar::batches(TEST_SEEDS[1], BATCHES) {
+        for known in 2..=batch.readings.len() {
+            let seen = &batch.readings[..known];
+            let next_h = seen[known - 1].at_h + 24.0;
+            let band = super::forecast(batch.span, seen, next_h).unwrap();
+            held.count((band.low..=band.high).contains(&batch.truth.at(next_h)));
+        }
+    }
+    println!(
+        "a day after any but the first reading the band holds {:.3} of {}",
+        held.share(),
+        held.of
+    );
+    assert!(held.of > 800 && (0.85..=0.95).contains(&held.share()), "{held:?}");
+}
+
+/// Once growth is over the clock runs evenly, early and late.
 #[test]
 fn the_clock_runs_evenly_on_drawn_ferments() {
     let mut dice = Dice::new(TEST_SEEDS[0]);

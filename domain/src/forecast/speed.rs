@@ -1,7 +1,7 @@
 //! The speed of a fermentation at its last reading, and how well it is known.
 
-use super::Point;
 use super::clock::{clock, growth_doubt};
+use super::{Point, SCORE_90};
 
 /// Speed of the clock per hour where nothing is known: 0.05 a day, which ends in three weeks. With [`MOST_DOUBT`] the 90 % band
 /// spans 0.01 to 0.26 a day, from a slow mead to a hot molasses wash. A judgement of ours.
@@ -14,27 +14,50 @@ const LEAST_PART: f64 = 0.1;
 /// The most that a speed may be in doubt, as the natural logarithm of a factor per standard deviation.
 const MOST_DOUBT: f64 = 1.0;
 
+/// Readings tell a speed once they differ by so many times their error; before, they say no more than one of them.
+const SEEN: f64 = 2.0;
 /// How far the speed wanders where nothing is seen of it: by so much of its square over the whole span of the readings, a
-/// factor of e^±0.17. Fitted as `clock.rs` says, with one simulated ferment in four changing its temperature by up to 4 K.
-const WANDER_UNSEEN: f64 = 0.03;
+/// factor of e^±0.12. Fitted as `clock.rs` says, with one simulated ferment in four changing its temperature by up to 4 K.
+const WANDER_UNSEEN: f64 = 0.015;
 
 /// Speed of the clock, with its doubt as a logarithm.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(super) struct Speed {
+    /// Whether readings tell it.
+    known: bool,
     /// Clock per hour, above zero.
     pub(super) per_hour: f64,
     /// Standard deviation of its logarithm now.
     doubt_now: f64,
+    /// Correlation of its error with that of the last reading, from 0 to 1: what reads too far makes it too fast as well.
+    pub(super) with_level: f64,
     /// Variance by which the speed itself wanders, clock² per h³.
     wander: f64,
 }
 
 impl Speed {
+    const UNKNOWN: Self = Self {
+        known: false,
+        per_hour: UNKNOWN_PER_HOUR,
+        doubt_now: MOST_DOUBT,
+        with_level: 0.0,
+        wander: 0.0,
+    };
+
+    /// What of the growth left on the clock may be over without having been read, for a speed that is not known: all of it,
+    /// but no more than the upper edge of the 90 % band of the speed gets through by then.
+    pub(super) fn skipped(&self, growth_left: f64, progress: f64) -> f64 {
+        if self.known { 0.0 } else { growth_left.min(progress * (SCORE_90 * MOST_DOUBT).exp()) }
+    }
+
     /// From monotone points, of which there is at least one; `sd` is the error of one fraction.
     pub(super) fn at_the_last(points: &[Point], sd: f64) -> Self {
         let [first, .., last] = points else {
-            return Self { per_hour: UNKNOWN_PER_HOUR, doubt_now: MOST_DOUBT, wander: 0.0 };
+            return Self::UNKNOWN;
         };
+        if last.fraction - first.fraction < SEEN * sd {
+            return Self::UNKNOWN;
+        }
         let span_h = last.at_h - first.at_h;
         let mean = ((clock(last.fraction) - clock(first.fraction)) / span_h).max(SLOWEST_PER_HOUR);
         let measured: Vec<Measured> =
@@ -44,7 +67,8 @@ impl Speed {
         let per_hour = trend.speed.max(LEAST_PART * mean);
         let relative_variance = trend.speed_variance / per_hour.powi(2);
         let doubt_now = relative_variance.ln_1p().sqrt().min(MOST_DOUBT);
-        Self { per_hour, doubt_now, wander }
+        let with_level = trend.covariance / (trend.level_variance * trend.speed_variance).sqrt();
+        Self { known: true, per_hour, doubt_now, with_level: with_level.clamp(0.0, 1.0), wander }
     }
 
     /// Standard deviation of the logarithm of the progress made in `hours`.

@@ -18,7 +18,7 @@ pub(super) struct Share {
 }
 
 impl Share {
-    fn count(&mut self, held: bool) {
+    pub(super) fn count(&mut self, held: bool) {
         self.held += u32::from(held);
         self.of += 1;
     }
