@@ -11,13 +11,16 @@ pub mod balling;
 pub mod ethanol_water;
 pub mod extract;
 pub mod hydrometer;
+pub mod refractometer;
+pub mod scale;
 pub mod sucrose;
 pub mod water;
 
 mod solve;
 
 pub use alcohol::{AlcoholEstimate, expected_alcohol, expected_final_gravity};
-pub use hydrometer::{Corrected, Scale, correct};
+pub use hydrometer::{Corrected, at_calibration, correct};
+pub use scale::Scale;
 
 #[cfg(test)]
 mod tests;
@@ -116,8 +119,32 @@ pub enum DensimetryError {
         asked: String,
     },
     /// No such scale name.
-    #[error("unknown scale {0:?}: use one of sg_20_20, plato, brix")]
+    #[error("unknown scale {0:?}: use one of {names}", names = Scale::names())]
     UnknownScale(String),
+    /// A number that its scale cannot show.
+    #[error(
+        "{reading} {name} is outside {min} to {max}: {advice}; the scales are {names}",
+        name = scale.name(), min = scale.range().0, max = scale.range().1, advice = scale.advice(),
+        names = Scale::names()
+    )]
+    OffScale {
+        /// The scale.
+        scale: Scale,
+        /// The number given.
+        reading: f64,
+    },
+    /// A reading that cannot be brought to SG 20/20 honestly.
+    #[error("{reading} {name} at {celsius:.1} °C is not brought to SG 20/20: {advice}", name = scale.name())]
+    NotCovered {
+        /// The scale.
+        scale: Scale,
+        /// The reading.
+        reading: f64,
+        /// The temperature of the liquid in °C.
+        celsius: f64,
+        /// Why, and what to do.
+        advice: &'static str,
+    },
 }
 
 /// The accepted range of one argument.

@@ -7,6 +7,7 @@ use super::body::{self, AdditionRecorded, BatchOpened, Component, Line};
 use super::command::{Draw, Refusal, Stop};
 use super::desk::Desk;
 use super::in_force::InForce;
+use super::state::batch::has_dropped;
 use super::state::{BatchState, LotState, State};
 use super::subject::Subject;
 use crate::checks::{
@@ -256,7 +257,7 @@ fn situation<'a>(
     let gravity_known = batch.gravities.last();
     let fraction = fraction(batch, opened, at);
     let dropped = match (original, gravity_known) {
-        (Some(first), Some(last)) => last.extract < first.extract - 0.3,
+        (Some(first), Some(last)) => has_dropped(first.extract, last.extract),
         _ => false,
     };
     Ok(Situation {

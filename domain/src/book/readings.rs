@@ -2,6 +2,8 @@
 //!
 //! The bounds only keep out what cannot be: they are physical or of the instrument, not limits of any law.
 
+use crate::densimetry::scale::UNITS as SCALES;
+
 /// One quantity that can be read.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Readable {
@@ -17,8 +19,8 @@ pub struct Readable {
 pub const READABLE: &[Readable] = &[
     Readable {
         name: "gravity",
-        units: &[("sg_20_20", 0.7, 1.6), ("plato", -20.0, 70.0), ("brix", -20.0, 70.0)],
-        meaning: "specific gravity or extract by hydrometer or density meter",
+        units: &SCALES,
+        meaning: "specific gravity or extract by hydrometer or density meter; of unfermented liquid also by refractometer",
     },
     Readable {
         name: "temperature",

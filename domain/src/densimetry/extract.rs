@@ -106,12 +106,53 @@ pub fn extract_g_l(gravity: SpecificGravity) -> f64 {
 
 /// Degrees Oechsle, 1000 (S − 1) on the gravity 20/20.
 pub fn oechsle(gravity: SpecificGravity) -> f64 {
-    1_000.0 * (gravity.get() - 1.0)
+    oechsle_at(gravity.get())
+}
+
+/// Degrees KMW of a gravity 20/20: the inverse of Oe = KMW (0.022 KMW + 4.54).
+///
+/// Read at an encyclopedia of food citing H. Ambrosi (1994) and in two wine glossaries; the table that Austrian law
+/// rounds to could not be read.
+pub fn kmw(gravity: SpecificGravity) -> f64 {
+    kmw_at(gravity.get())
 }
 
 /// Degrees Baumé of liquids heavier than water with the modulus 145 (NBS, from memory): 145 − 145/S.
 pub fn baume_145(gravity: SpecificGravity) -> f64 {
-    145.0 - 145.0 / gravity.get()
+    baume_at(gravity.get())
+}
+
+pub(super) fn oechsle_at(gravity: f64) -> f64 {
+    1_000.0 * (gravity - 1.0)
+}
+
+pub(super) fn gravity_at_oechsle(degrees: f64) -> f64 {
+    1.0 + degrees / 1_000.0
+}
+
+/// Oe = 0.022 K² + 4.54 K.
+const KMW: (f64, f64) = (0.022, 4.54);
+
+pub(super) fn kmw_at(gravity: f64) -> f64 {
+    let (square, linear) = KMW;
+    let root = (linear * linear + 4.0 * square * oechsle_at(gravity)).sqrt();
+    (root - linear) / (2.0 * square)
+}
+
+pub(super) fn gravity_at_kmw(degrees: f64) -> f64 {
+    let (square, linear) = KMW;
+    gravity_at_oechsle(degrees * (square * degrees + linear))
+}
+
+/// Modulus of the Baumé scale of liquids heavier than water (NBS, from memory).
+const MODULUS: f64 = 145.0;
+
+pub(super) fn baume_at(gravity: f64) -> f64 {
+    MODULUS - MODULUS / gravity
+}
+
+pub(super) fn gravity_at_baume(degrees: f64) -> f64 {
+    MODULUS / (MODULUS - degrees)
 }
 
 /// The gravity in air of a liquid against water, from their densities in vacuum at one temperature.

@@ -9,9 +9,12 @@
 //! A fermenting liquid holds ethanol, which expands more than sugar water: what is corrected by more than five
 //! kelvin is an estimate, and says so.
 
+use super::scale::{Formula, Scale, Shows};
 use super::solve::rising_root;
 use super::water::kell_90;
-use super::{Celsius, DensimetryError, MassFraction, SpecificGravity, extract, sucrose};
+use super::{
+    Celsius, DensimetryError, MassFraction, SpecificGravity, extract, refractometer, sucrose,
+};
 
 /// Cubic expansion of soda-lime glass per K (OIML R 22 tables VIII and IX).
 const GLASS: f64 = 25e-6;
@@ -22,52 +25,17 @@ const METHOD: &str =
     "sucrose densities (ICUMSA SPS-4), soda-lime glass 25e-6/K; extract by the cubic on NBS C440";
 
 const NOT_CORRECTED: &str = "not corrected for temperature: outside what the sugar model covers";
-const ESTIMATE: &str =
-    "read more than 5 K from 20 °C: the correction is an estimate, the more so with alcohol";
+const NOT_COVERED: &str = "outside what the sugar model covers; read it on sg_20_20 at 20 °C, or have its density measured";
 const LIGHTER_THAN_WATER: &str = "below SG 1.000 the apparent extract is negative: alcohol makes the liquid lighter \
      than water, it does not say how much sugar is left";
 const PLATO_OVER: &str =
     "above 25 °P the ASBC cubic is not fitted: taken as % mass by the cubic on NBS C440";
 const BRIX_OVER: &str = "above 40 Brix the cubic on NBS C440 is extrapolated";
 
-/// The scale engraved on a hydrometer of 20 °C.
-#[derive(Clone, Copy, Debug, Eq, Hash, Ord, PartialEq, PartialOrd)]
-pub enum Scale {
-    /// Specific gravity 20/20 °C.
-    Sg20_20,
-    /// Degrees Plato, grams per 100 g.
-    Plato,
-    /// Degrees Brix, grams per 100 g.
-    Brix,
-}
-
-impl Scale {
-    /// Every scale, in the order a list shows them.
-    pub const ALL: [Self; 3] = [Self::Sg20_20, Self::Plato, Self::Brix];
-
-    /// The name used in columns, JSON and on the command line.
-    pub const fn name(self) -> &'static str {
-        match self {
-            Self::Sg20_20 => "sg_20_20",
-            Self::Plato => "plato",
-            Self::Brix => "brix",
-        }
-    }
-
-    /// The scale of that name.
-    ///
-    /// # Errors
-    /// [`DensimetryError::UnknownScale`] with the names that exist.
-    pub fn parse(name: &str) -> Result<Self, DensimetryError> {
-        let unknown = || DensimetryError::UnknownScale(name.chars().take(40).collect());
-        Self::ALL.into_iter().find(|scale| scale.name() == name).ok_or_else(unknown)
-    }
-}
-
 /// A reading at its calibration temperature, on both scales the program thinks in.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Corrected {
-    /// What the instrument would show at 20 °C, on its own scale.
+    /// What the instrument would show at its calibration temperature, on its own scale.
     pub corrected: f64,
     /// Specific gravity 20/20 °C, in air.
     pub sg_20_20: f64,
@@ -81,7 +49,15 @@ pub struct Corrected {
     pub notes: Vec<&'static str>,
 }
 
-/// Corrects a hydrometer reading for the temperature of the liquid.
+/// A reading taken at the temperature its scale is made for, or said to be.
+///
+/// # Errors
+/// As [`correct`].
+pub fn at_calibration(reading: f64, scale: Scale) -> Result<Corrected, DensimetryError> {
+    correct(reading, scale, scale.calibration().0)
+}
+
+/// Corrects a reading for the temperature of the liquid, and brings it to SG 20/20.
 ///
 /// ```
 /// use domain::densimetry::{Scale, correct};
@@ -91,27 +67,21 @@ pub struct Corrected {
 /// ```
 ///
 /// # Errors
-/// [`DensimetryError::OutOfRange`] for a temperature outside 0 to 80 °C, a gravity outside 0.7 to 1.6, an extract
-/// outside −20 to 70.
+/// [`DensimetryError::OffScale`] for a number the scale cannot show, [`DensimetryError::OutOfRange`] for a temperature
+/// outside 0 to 80 °C, [`DensimetryError::NotCovered`] where neither the sugar model nor a published table reaches.
 pub fn correct(
     reading: f64,
     scale: Scale,
     temperature_c: f64,
 ) -> Result<Corrected, DensimetryError> {
-    let at = Celsius(sucrose::TEMPERATURES.admit(temperature_c)?);
-    let at_20 = match scale {
-        Scale::Sg20_20 => corrected_gravity(SpecificGravity::new(reading)?, Celsius::TWENTY, at),
-        Scale::Plato | Scale::Brix => corrected_extract(extract::EXTRACTS.admit(reading)?, at),
+    scale.admit(reading)?;
+    let at = Celsius(temperature_c);
+    let found = match scale.shows() {
+        Shows::Gravity(gravity, degrees) => by_gravity(reading, scale, at, (gravity, degrees))?,
+        Shows::Extract => by_extract(reading, scale, at)?,
+        Shows::Refraction => refractometer::by_refraction(reading, scale, at)?,
     };
-    let corrected = at_20.unwrap_or(reading);
-    let gravity = match scale {
-        Scale::Sg20_20 => SpecificGravity::new(corrected)?,
-        Scale::Plato if corrected <= extract::PLATO_FITTED_TO => {
-            extract::gravity_of_plato(corrected)?
-        }
-        Scale::Plato | Scale::Brix => extract::gravity_of_brix(corrected)?,
-    };
-    let apparent_extract = extract::brix(gravity);
+    let apparent_extract = extract::brix(found.gravity);
 
     let mut notes = Vec::new();
     let mut note_if = |condition: bool, note| {
@@ -119,19 +89,69 @@ pub fn correct(
             notes.push(note);
         }
     };
-    note_if(at_20.is_none(), NOT_CORRECTED);
-    note_if(at_20.is_some() && (temperature_c - 20.0).abs() > 5.0, ESTIMATE);
-    note_if(gravity.get() < 1.0, LIGHTER_THAN_WATER);
-    note_if(scale == Scale::Plato && corrected > extract::PLATO_FITTED_TO, PLATO_OVER);
+    let far_off = (temperature_c - scale.calibration().0).abs() > 5.0;
+    note_if(!found.covered, NOT_CORRECTED);
+    note_if(found.covered && far_off, scale.far_off());
+    note_if(found.gravity.get() < 1.0, LIGHTER_THAN_WATER);
+    note_if(scale == Scale::Plato && found.corrected > extract::PLATO_FITTED_TO, PLATO_OVER);
     note_if(apparent_extract > extract::BRIX_FITTED_TO, BRIX_OVER);
+    notes.extend(scale.remarks());
     Ok(Corrected {
-        corrected,
-        sg_20_20: gravity.get(),
+        corrected: found.corrected,
+        sg_20_20: found.gravity.get(),
         apparent_extract,
-        correction: corrected - reading,
-        method: METHOD,
+        correction: found.corrected - reading,
+        method: found.method,
         notes,
     })
+}
+
+/// What a reading comes to: on its own scale at its calibration, and as a gravity.
+pub(super) struct Found {
+    pub(super) corrected: f64,
+    pub(super) gravity: SpecificGravity,
+    pub(super) covered: bool,
+    pub(super) method: &'static str,
+}
+
+/// A float whose number stands for a gravity. Outside the sugar model a scale of 20 °C is left as it was read; one of
+/// another temperature cannot be, because its number is not yet a gravity 20/20.
+fn by_gravity(
+    reading: f64,
+    scale: Scale,
+    at: Celsius,
+    (gravity, degrees): (Formula, Formula),
+) -> Result<Found, DensimetryError> {
+    sucrose::TEMPERATURES.admit(at.0)?;
+    let (calibration, shown) = (scale.calibration(), gravity(reading));
+    let Some(sugar) = sugar_in(shown * kell_90(calibration), calibration, at) else {
+        if calibration != Celsius::TWENTY {
+            let (celsius, advice) = (at.0, NOT_COVERED);
+            return Err(DensimetryError::NotCovered { scale, reading, celsius, advice });
+        }
+        let gravity = SpecificGravity::new(shown)?;
+        return Ok(Found { corrected: reading, gravity, covered: false, method: METHOD });
+    };
+    let against_water = |at| sucrose::formula(sugar, at) / kell_90(at);
+    Ok(Found {
+        corrected: degrees(against_water(calibration)),
+        gravity: SpecificGravity::new(against_water(Celsius::TWENTY))?,
+        covered: true,
+        method: METHOD,
+    })
+}
+
+/// A float graduated in grams of sucrose per 100 g.
+fn by_extract(reading: f64, scale: Scale, at: Celsius) -> Result<Found, DensimetryError> {
+    sucrose::TEMPERATURES.admit(at.0)?;
+    let at_20 = corrected_extract(reading, at);
+    let corrected = at_20.unwrap_or(reading);
+    let gravity = if scale == Scale::Plato && corrected <= extract::PLATO_FITTED_TO {
+        extract::gravity_of_plato(corrected)?
+    } else {
+        extract::gravity_of_brix(corrected)?
+    };
+    Ok(Found { corrected, gravity, covered: at_20.is_some(), method: METHOD })
 }
 
 /// A gravity read at `at` on a scale of `calibration` (20 °C or 60 °F, against water of the same temperature), as it

@@ -6,6 +6,8 @@ use super::alcohol::{OriginalGravity, PresentGravity};
 use super::balling::{self, AlcoholByMass, ApparentExtract, OriginalExtract, RealExtract};
 use super::*;
 
+mod scales;
+
 /// One row of a reference table, by column.
 struct Row(Vec<&'static str>);
 
@@ -68,6 +70,18 @@ fn sg(value: f64) -> SpecificGravity {
 
 fn alcohol(original: f64, present: f64) -> AlcoholEstimate {
     expected_alcohol(OriginalGravity(sg(original)), PresentGravity(sg(present))).unwrap()
+}
+
+/// What a scale shows of a gravity 20/20 at 20 °C; a scale of 60 °F about as much.
+fn on(scale: Scale, gravity: f64) -> f64 {
+    match scale {
+        Scale::Sg20_20 | Scale::Sg60_60 => gravity,
+        Scale::Plato => extract::plato(sg(gravity)),
+        Scale::Brix | Scale::RefractometerBrix => extract::brix(sg(gravity)),
+        Scale::Oechsle => extract::oechsle(sg(gravity)),
+        Scale::Kmw => extract::kmw(sg(gravity)),
+        Scale::Baume145 => extract::baume_145(sg(gravity)),
+    }
 }
 
 fn close(actual: f64, expected: f64, tolerance: f64) {
@@ -339,9 +353,13 @@ fn the_three_scales_agree_on_one_liquid() {
 
 #[test]
 fn warmer_liquid_means_a_larger_correction() {
-    for scale in Scale::ALL {
-        for (gravity, extract) in [(0.995, -1.0), (1.0, 0.0), (1.04, 10.0), (1.1, 24.0)] {
-            let reading = if scale == Scale::Sg20_20 { gravity } else { extract };
+    for scale in Scale::all().filter(|scale| *scale != Scale::RefractometerBrix) {
+        for gravity in [0.995, 1.0, 1.04, 1.1] {
+            let reading = on(scale, gravity);
+            if scale.admit(reading).is_err() {
+                assert!(gravity < 1.0, "{} shows no {gravity}", scale.name());
+                continue;
+            }
             let at = |celsius: i32| correct(reading, scale, f64::from(celsius)).unwrap().correction;
             for celsius in 10..60 {
                 assert!(at(celsius) < at(celsius + 1), "{} at {celsius}", scale.name());
@@ -363,10 +381,22 @@ fn readings_outside_every_scale_are_refused_with_what_to_do() {
         (1.05, Scale::Sg20_20, f64::INFINITY),
     ] {
         let refused = correct(reading, scale, at).unwrap_err();
-        assert!(matches!(refused, DensimetryError::OutOfRange { .. }), "{refused}");
+        let kind = matches!(
+            refused,
+            DensimetryError::OutOfRange { .. } | DensimetryError::OffScale { .. }
+        );
+        assert!(kind, "{refused}");
+    }
+    for scale in Scale::all() {
+        let (least, most) = scale.range();
+        for reading in [least - 0.01, most + 0.01, f64::NAN, f64::INFINITY] {
+            let refused = correct(reading, scale, 20.0).unwrap_err().to_string();
+            assert!(Scale::all().all(|each| refused.contains(each.name())), "{refused}");
+            assert!(refused.contains("check"), "{refused}");
+        }
     }
     let slip = correct(1050.0, Scale::Sg20_20, 20.0).unwrap_err().to_string();
-    assert!(slip.starts_with("specific gravity 1050 is outside 0.7 to 1.6: check"), "{slip}");
+    assert!(slip.starts_with("1050 sg_20_20 is outside 0.7 to 1.6: check"), "{slip}");
 }
 
 #[test]
@@ -380,11 +410,18 @@ fn what_the_sugar_model_does_not_cover_is_left_as_read_and_said_so() {
 
 #[test]
 fn every_scale_is_found_by_its_name() {
-    for scale in Scale::ALL {
+    for (position, scale) in Scale::all().enumerate() {
         assert_eq!(Scale::parse(scale.name()), Ok(scale));
+        let (name, least, most) = scale::UNITS[position];
+        assert_eq!((scale.name(), scale.range()), (name, (least, most)));
+        assert!(!scale.meaning().is_empty() && !scale.sign().is_empty());
     }
+    assert_eq!(Scale::all().count(), scale::UNITS.len());
     let unknown = Scale::parse("SG").unwrap_err().to_string();
-    assert_eq!(unknown, "unknown scale \"SG\": use one of sg_20_20, plato, brix");
+    assert_eq!(
+        unknown,
+        "unknown scale \"SG\": use one of sg_20_20, sg_60_60, plato, brix, oechsle, kmw, baume_145, refractometer_brix"
+    );
 }
 
 #[test]

@@ -559,6 +559,7 @@ fn value((quantity, value, unit): &(&str, &str, &str)) -> Reading {
         method: None,
         instrument: None,
         corrected: None,
+        left_as_read: None,
     }
 }
 

@@ -9,4 +9,5 @@ mod corrections;
 mod decisions;
 mod examples;
 mod histories;
+mod scales;
 mod scenario;

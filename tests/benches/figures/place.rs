@@ -67,6 +67,7 @@ impl Within {
             method: None,
             instrument: None,
             corrected: None,
+            left_as_read: None,
         }];
         let key: CommandId = self.house.draw().expect("randomness");
         let mut print = [0; 32];

@@ -68,6 +68,9 @@ pub struct Reading {
     /// A gravity's value at 20 °C.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub corrected: Option<CorrectedGravity>,
+    /// Why a gravity has none and is no point of the curve, and what to do about it.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub left_as_read: Option<String>,
 }
 
 /// A temperature as entered.

@@ -12,7 +12,7 @@ use crate::book::command::{Decision, OpenBatch, Refusal, Stop, ingredient, not_a
 use crate::book::desk::Desk;
 use crate::book::subject::{Subject, SubjectKind};
 use crate::checks::{Basis, Finding, Verdict};
-use crate::densimetry::{Scale, correct};
+use crate::densimetry::{Scale, at_calibration};
 use crate::ids::{BatchId, DeviationId, HoldingId, LotId};
 use crate::nitrogen::Demand;
 use crate::stamp::Stamp;
@@ -226,8 +226,15 @@ fn expected_final(
     let pointer = "/expected_final";
     let wrong = |detail: String| Refusal::meaningless(pointer, detail);
     let read_on = Scale::parse(scale).map_err(|e| wrong(e.to_string()))?;
+    if read_on == Scale::RefractometerBrix {
+        return Err(wrong(
+            "a refractometer does not show the end of a fermentation, because it sees alcohol as well as sugar: \
+             give the expected final on a scale of density, such as sg_20_20"
+                .to_owned(),
+        ));
+    }
     let number = crate::units::Decimal::parse(value).map_err(|e| wrong(e.to_string()))?;
-    let found = correct(number.to_f64(), read_on, 20.0).map_err(|e| wrong(e.to_string()))?;
+    let found = at_calibration(number.to_f64(), read_on).map_err(|e| wrong(e.to_string()))?;
     Ok(ExpectedFinal {
         value: value.clone(),
         scale: scale.clone(),

@@ -6,7 +6,7 @@ use super::Deciding;
 use super::additions::{breach as breach_of, corrected, is_worse, span, subjects_of};
 use super::batches::{opening, opening_subjects};
 use super::lots::receipt;
-use super::readings::{checked, reading};
+use super::readings::{Sampled, checked, reading};
 use crate::book::assessing::settings_of;
 use crate::book::body::oversight::{About, ItemChange, VoidMark};
 use crate::book::body::{
@@ -251,10 +251,10 @@ fn effect(
                 (act.opened_at, opening_subjects(&body), body.into())
             }
             (AmendTo::Value(index, value), Body::ReadingTaken(old)) => {
-                return Ok((item(it, old, *index, value)?, Vec::new()));
+                return Ok((item(it, (target, old), *index, value)?, Vec::new()));
             }
             (AmendTo::Reading(act), Body::ReadingTaken(_)) => {
-                let body = reading(it, act)?;
+                let body = reading(it, &it.desk.without(target), act)?;
                 (act.taken_at, vec![act.batch.into(), body.holding.into()], body.into())
             }
             (AmendTo::Addition(act), Body::AdditionRecorded(old)) => {
@@ -305,7 +305,7 @@ fn nothing_leans_on(it: &Deciding<'_>, target: &InForce) -> Result<(), Stop> {
 /// One value of a reading; values that others were computed from are replaced with the whole reading.
 fn item(
     it: &Deciding<'_>,
-    old: &crate::book::body::ReadingTaken,
+    (target, old): (&InForce, &crate::book::body::ReadingTaken),
     index: u32,
     value: &crate::book::body::Reading,
 ) -> Result<Effect, Stop> {
@@ -334,7 +334,10 @@ fn item(
         )
         .into());
     }
-    let checked = checked(it, value, at)?;
+    let desk = it.desk.without(target);
+    let sampled =
+        Sampled { batch: desk.batch(old.batch)?, at: target.occurred_at.at, beside: &old.values };
+    let checked = checked(it, sampled, value, at)?;
     let value =
         serde_json::to_value(checked).map_err(|e| Refusal::meaningless(at, e.to_string()))?;
     let (_, kv) = Body::READING_TAKEN;

@@ -7,31 +7,38 @@ use crate::book::body::batches::ExpectedFinal;
 use crate::book::body::readings::{CorrectedGravity, Temperature};
 use crate::book::body::{Nitrogen, Reading, ReadingTaken};
 use crate::book::command::{Decision, Refusal, Stop, TakeReading, not_ahead};
+use crate::book::desk::Desk;
 use crate::book::readings::{READABLE, readable};
-use crate::book::state::BatchState;
+use crate::book::state::batch::{BatchState, has_dropped};
 use crate::checks::Finding;
 use crate::checks::plausibility::{self, Before, GravityRead};
-use crate::densimetry::{Scale, correct};
+use crate::densimetry::{
+    Corrected, DensimetryError, Scale, at_calibration, correct, refractometer,
+};
 use crate::nitrogen::{Ammonium, Yan};
 use crate::settings::Setting;
-use crate::stamp::Stamp;
+use crate::stamp::{Micros, Stamp};
 use crate::units::Decimal;
 
 /// The most values one entry holds.
 const MOST_VALUES: usize = 50;
 
 pub(super) fn take(it: &mut Deciding<'_>, act: &TakeReading) -> Result<Decision, Stop> {
-    let body = reading(it, act)?;
+    let body = reading(it, it.desk, act)?;
     let subjects = [act.batch.into(), body.holding.into()];
     let mut draft = it.draft(act.taken_at, subjects, body);
     draft.captured_at = act.captured_at;
     Ok(Decision { drafts: vec![draft], ..Decision::default() })
 }
 
-/// The reading as an entry says it; also what an amendment puts in its place.
-pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTaken, Stop> {
+/// The reading as an entry says it; also what an amendment puts in its place, on a desk without the old one.
+pub(super) fn reading(
+    it: &Deciding<'_>,
+    desk: &Desk,
+    act: &TakeReading,
+) -> Result<ReadingTaken, Stop> {
     not_ahead("/taken_at", act.taken_at, it.now)?;
-    let batch = it.desk.batch(act.batch)?;
+    let batch = desk.batch(act.batch)?;
     let Some((_, opened)) = &batch.opened else { return Err(Refusal::unknown("batch").into()) };
     let holding = opened.holding;
     if act.values.is_empty() || act.values.len() > MOST_VALUES {
@@ -39,11 +46,12 @@ pub(super) fn reading(it: &Deciding<'_>, act: &TakeReading) -> Result<ReadingTak
             Refusal::meaningless("/values", format!("give 1 to {MOST_VALUES} values")).into()
         );
     }
+    let sampled = Sampled { batch, at: act.taken_at.at, beside: &act.values };
     let values = act
         .values
         .iter()
         .enumerate()
-        .map(|(index, value)| checked(it, value, &format!("/values/{index}")))
+        .map(|(index, value)| checked(it, sampled, value, &format!("/values/{index}")))
         .collect::<Result<Vec<_>, Stop>>()?;
     Ok(ReadingTaken {
         batch: act.batch,
@@ -100,8 +108,42 @@ fn end_sg(expected: &ExpectedFinal) -> Option<f64> {
     Some(correct(expected.value.parse().ok()?, scale, 20.0).ok()?.sg_20_20)
 }
 
+/// What was read: which batch, when, and what else was found in the same sample.
+#[derive(Clone, Copy)]
+pub(super) struct Sampled<'a> {
+    pub(super) batch: &'a BatchState,
+    pub(super) at: Micros,
+    pub(super) beside: &'a [Reading],
+}
+
+impl Sampled<'_> {
+    /// Why there may be alcohol in it, if that is known, when it reads as this apparent extract.
+    fn fermenting(self, extract: f64) -> Option<&'static str> {
+        let alcohol = self.beside.iter().filter(|value| value.quantity == "ethanol");
+        let found = |value: &Reading| Decimal::parse(&value.value).is_ok_and(|v| v.to_f64() > 0.0);
+        let mut measured = alcohol.filter(|value| value.qualifier.as_deref() != Some("<"));
+        if self.batch.pitched_at.is_some_and(|pitched| pitched < self.at) {
+            return Some("yeast went in before");
+        }
+        if measured.any(found) {
+            return Some("alcohol was found in it");
+        }
+        let known = self.batch.gravities.iter().take_while(|known| known.at <= self.at);
+        let mut extracts = known.map(|known| known.extract).chain([extract]);
+        let first = extracts.next()?;
+        extracts
+            .any(|later| has_dropped(first, later))
+            .then_some("its gravity has fallen since the first reading")
+    }
+}
+
 /// One value, believed or refused with what is believed; a gravity also brought to 20 °C.
-pub(super) fn checked(it: &Deciding<'_>, value: &Reading, at: &str) -> Result<Reading, Stop> {
+pub(super) fn checked(
+    it: &Deciding<'_>,
+    sampled: Sampled<'_>,
+    value: &Reading,
+    at: &str,
+) -> Result<Reading, Stop> {
     let Some(known) = readable(&value.quantity) else {
         let names: Vec<_> = READABLE.iter().map(|readable| readable.name).collect();
         return Err(Refusal::meaningless(
@@ -121,6 +163,10 @@ pub(super) fn checked(it: &Deciding<'_>, value: &Reading, at: &str) -> Result<Re
     let number = Decimal::parse(&value.value)
         .map_err(|e| Refusal::meaningless(&format!("{at}/value"), e.to_string()))?
         .to_f64();
+    if known.name == "gravity" {
+        let within = Scale::parse(&value.unit).and_then(|scale| scale.admit(number));
+        within.map_err(|e| Refusal::meaningless(&format!("{at}/value"), e.to_string()))?;
+    }
     if !(*least..=*most).contains(&number) {
         return Err(Refusal::meaningless(
             &format!("{at}/value"),
@@ -141,25 +187,46 @@ pub(super) fn checked(it: &Deciding<'_>, value: &Reading, at: &str) -> Result<Re
     if let Some(instrument) = value.instrument {
         it.desk.instrument(instrument)?;
     }
-    let corrected = match known.name {
-        "gravity" => gravity(value, number, at)?,
-        _ => None,
+    let (corrected, left_as_read) = match known.name {
+        "gravity" => match gravity(sampled, value, number, at)? {
+            Ok(corrected) => (Some(corrected), None),
+            Err(why) => (None, Some(why)),
+        },
+        _ => (None, None),
     };
-    Ok(Reading { corrected, ..value.clone() })
+    Ok(Reading { corrected, left_as_read, ..value.clone() })
 }
 
-/// A gravity at 20 °C. Without the sample's temperature it is taken as read, and says so.
-fn gravity(value: &Reading, number: f64, at: &str) -> Result<Option<CorrectedGravity>, Refusal> {
-    let wrong = |e: crate::densimetry::DensimetryError, field: &str| {
-        Refusal::meaningless(&format!("{at}/{field}"), e.to_string())
-    };
-    let scale = Scale::parse(&value.unit).map_err(|e| wrong(e, "unit"))?;
+/// A gravity at 20 °C, or why it is kept as it was read: hotter than the sugar tables reach, or by refractometer in a
+/// liquid that holds alcohol. Without the sample's temperature it is taken as read, and says so.
+fn gravity(
+    sampled: Sampled<'_>,
+    value: &Reading,
+    number: f64,
+    at: &str,
+) -> Result<Result<CorrectedGravity, String>, Refusal> {
+    let unknown = |e: DensimetryError| Refusal::meaningless(&format!("{at}/unit"), e.to_string());
+    let scale = Scale::parse(&value.unit).map_err(unknown)?;
     let celsius = value.sample_temperature.as_ref().map(|given| believed(given, at)).transpose()?;
-    let Ok(found) = correct(number, scale, celsius.unwrap_or(20.0)) else {
-        // Hotter than the sugar tables reach: kept as it was read, and not corrected.
-        return Ok(None);
+    let found = match celsius {
+        Some(celsius) => correct(number, scale, celsius),
+        None => at_calibration(number, scale),
     };
-    let mut method = if celsius.is_some() {
+    let found = match found {
+        Ok(found) => found,
+        Err(e) => return Ok(Err(e.to_string())),
+    };
+    if scale == Scale::RefractometerBrix
+        && let Some(reason) = sampled.fermenting(found.apparent_extract)
+    {
+        return Ok(Err(format!("{reason}: {}", refractometer::FERMENTED)));
+    }
+    Ok(Ok(kept(found, celsius.is_some())))
+}
+
+/// A corrected gravity as an entry keeps it.
+fn kept(found: Corrected, temperature_known: bool) -> CorrectedGravity {
+    let mut method = if temperature_known {
         found.method.to_owned()
     } else {
         "taken as read: no sample temperature was given".to_owned()
@@ -168,13 +235,13 @@ fn gravity(value: &Reading, number: f64, at: &str) -> Result<Option<CorrectedGra
         method.push_str("; ");
         method.push_str(note);
     }
-    Ok(Some(CorrectedGravity {
+    CorrectedGravity {
         sg_20_20: format!("{:.5}", found.sg_20_20),
         apparent_extract_percent: format!("{:.4}", found.apparent_extract),
         correction: format!("{:.5}", found.correction),
         method,
         engine: ENGINE.to_owned(),
-    }))
+    }
 }
 
 /// A sample's temperature in °C, if it can be one of a liquid.

@@ -104,6 +104,12 @@ impl ProposalState {
     }
 }
 
+/// Whether an apparent extract (% mass) is below the first by more than two readings of one liquid differ: 0.3 %, our
+/// own line.
+pub(crate) const fn has_dropped(first: f64, later: f64) -> bool {
+    later < first - 0.3
+}
+
 impl BatchState {
     pub(crate) const fn new(batch: BatchId) -> Self {
         Self {

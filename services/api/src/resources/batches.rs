@@ -56,7 +56,7 @@ pub(crate) struct NewExpectedFinal {
     /// Decimal text.
     #[schema(example = "0.9920")]
     value: String,
-    /// `sg_20_20`, `plato` or `brix`.
+    /// A scale of density: `sg_20_20`, `sg_60_60`, `plato`, `brix`, `oechsle`, `kmw` or `baume_145`.
     #[schema(example = "sg_20_20")]
     scale: String,
     /// From what it follows: composition, laboratory, earlier batches.

@@ -59,7 +59,8 @@ pub(crate) struct NewValue {
     /// Decimal text.
     #[schema(example = "1.0665")]
     value: String,
-    /// UCUM unit, or for a gravity its scale: `sg_20_20`, plato, brix.
+    /// UCUM unit, or for a gravity its scale: `sg_20_20`, `sg_60_60`, `plato`, `brix`, `oechsle`, `kmw`, `baume_145`, or
+    /// `refractometer_brix` of unfermented liquid.
     #[schema(example = "sg_20_20")]
     unit: String,
     /// `<`, `>` or `about`.
@@ -97,6 +98,7 @@ impl NewValue {
             method: self.method,
             instrument: self.instrument.map(Into::into),
             corrected: None,
+            left_as_read: None,
         }
     }
 }
@@ -137,7 +139,8 @@ impl NewReading {
     }
 }
 
-/// Records what was measured. A gravity comes back corrected to 20 °C, with the method.
+/// Records what was measured. A gravity comes back as SG 20/20 and apparent extract, with the method; one that cannot
+/// be (a refractometer's once yeast is at work) comes back as it was read, with the reason in `left_as_read`.
 #[utoipa::path(post, path = "/v1/batches/{id}/readings", operation_id = "take_reading", tag = "batches", request_body = NewReading, security(("bearer" = [])),
     params(("id" = Uuid, Path), ("Idempotency-Key" = Uuid, Header, description = "A UUID of your own for this request")),
     responses((status = 201, body = Recorded), (status = "4XX", body = ProblemDocument, content_type = "application/problem+json")))]

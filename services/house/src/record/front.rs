@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use domain::book::body::{AdditionRecorded, BatchOpened, Body, LotReceived, Reading, ReadingTaken};
 use domain::book::in_force::InForce;
-use domain::densimetry::{Scale, correct};
+use domain::densimetry::{Scale, at_calibration};
 use domain::ids::LotId;
 use domain::stamp::Micros;
 use domain::units::Quantity;
@@ -292,7 +292,7 @@ fn celsius(value: &Reading) -> Option<f32> {
 
 /// A gravity on the chart's scale; only drawn, never decided on.
 fn gravity_of(value: &str, scale: &str) -> Option<f32> {
-    let found = correct(value.parse().ok()?, Scale::parse(scale).ok()?, 20.0).ok()?;
+    let found = at_calibration(value.parse().ok()?, Scale::parse(scale).ok()?).ok()?;
     Some(narrow(found.sg_20_20))
 }
 

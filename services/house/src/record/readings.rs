@@ -217,7 +217,11 @@ fn method(value: &Reading, n: u64, seen: &mut Seen) -> String {
     if let Some(corrected) = &value.corrected {
         seen.corrections.entry(corrected.method.clone()).or_insert(n);
     }
-    [value.method.clone(), correction].into_iter().flatten().collect::<Vec<_>>().join("; ")
+    [value.method.clone(), correction, value.left_as_read.clone()]
+        .into_iter()
+        .flatten()
+        .collect::<Vec<_>>()
+        .join("; ")
 }
 
 fn remark(body: &ReadingTaken) -> String {

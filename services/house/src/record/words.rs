@@ -2,6 +2,7 @@
 
 use domain::book::body::{Line, Reading};
 use domain::checks;
+use domain::densimetry::Scale;
 use domain::stamp::{Micros, Stamp};
 use domain::units::{Dimension, Quantity, div_half_even};
 
@@ -134,10 +135,10 @@ pub(crate) fn entered(reading: &Reading) -> String {
 
 /// The sign of a unit or scale.
 fn unit(code: &str) -> &str {
+    if let Ok(scale) = Scale::parse(code) {
+        return scale.sign();
+    }
     match code {
-        "sg_20_20" => "SG",
-        "plato" => "°P",
-        "brix" => "°Bx",
         "Cel" => "°C",
         "[degF]" => "°F",
         "[pH]" => "",

@@ -299,6 +299,7 @@ impl Book {
             method: Some("hydrometer, 20 °C scale".to_owned()),
             instrument: Some(cellar.hydrometer),
             corrected: None,
+            left_as_read: None,
         }
     }
 
@@ -345,6 +346,7 @@ impl Book {
             method: Some("enzymatic".to_owned()),
             instrument: None,
             corrected: None,
+            left_as_read: None,
         };
         let act = TakeReading {
             batch: cellar.batch,

@@ -158,6 +158,7 @@ pub(super) fn value_of(value: &str) -> Reading {
         method: None,
         instrument: None,
         corrected: None,
+        left_as_read: None,
     }
 }
 
