@@ -169,6 +169,6 @@ impl Limits {
 }
 
 /// Coefficients from the constant upwards, at `x` (Horner's scheme).
-pub(crate) fn polynomial(coefficients: &[f64], x: f64) -> f64 {
+fn polynomial(coefficients: &[f64], x: f64) -> f64 {
     coefficients.iter().rev().fold(0.0, |sum, c| sum * x + c)
 }

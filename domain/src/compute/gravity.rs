@@ -5,9 +5,8 @@ use crate::densimetry::alcohol::{OriginalGravity, PresentGravity, expected_alcoh
 use crate::densimetry::balling::{
     self, AlcoholByMass, ApparentExtract, OriginalExtract, RealExtract,
 };
-use crate::densimetry::hydrometer::corrected_gravity;
 use crate::densimetry::{
-    Celsius, MassFraction, Scale, SpecificGravity, correct, ethanol_water, extract, polynomial,
+    Celsius, MassFraction, Scale, SpecificGravity, correct, ethanol_water, extract, refractometer,
     sucrose, water,
 };
 
@@ -72,7 +71,10 @@ pub(super) const ALL: &[Calculation] = &[
         meaning: "a hydrometer reading at the temperature of its scale",
         fields: &[
             Field { name: "reading", takes: "as the scale shows it" },
-            Field { name: "scale", takes: "brix, plato, sg_20_20 or sg_60_60" },
+            Field {
+                name: "scale",
+                takes: "a scale of the ledger, such as brix, plato, sg_20_20, sg_60_60",
+            },
             TEMPERATURE,
         ],
         gives: &["corrected", "correction"],
@@ -120,7 +122,7 @@ pub(super) const ALL: &[Calculation] = &[
     Calculation {
         name: "refractive_index",
         meaning: "a refractive index as sucrose, of unfermented liquid",
-        fields: &[Field { name: "n_d20", takes: "at 20 °C and 589.3 nm, 1.333 to 1.45" }],
+        fields: &[Field { name: "n_d20", takes: "at 20 °C and 589.3 nm, 1.333 to 1.5" }],
         gives: &["sucrose_percent"],
         source: "our fit to table II of OIV-MA-AS2-02 from 10 to 30 %; outside, a polynomial of degree 5",
         run: refractive_index,
@@ -210,20 +212,8 @@ fn scales(given: &Given<'_>) -> Result<Found, Fault> {
 }
 
 fn hydrometer(given: &Given<'_>) -> Result<Found, Fault> {
-    const METHOD: &str = "sucrose solution of SPS-4 around a float of glass (25e-6 per K)";
     let (reading, scale) = (given.number("reading")?, given.text("scale")?);
     let celsius = given.within("temperature_c", 0.0, 80.0)?;
-    if scale == "sg_60_60" {
-        let read = SpecificGravity::new(reading).map_err(|error| Fault::at("reading", error))?;
-        let at = Celsius(celsius);
-        let corrected =
-            corrected_gravity(read, Celsius::SIXTY_FAHRENHEIT, at).ok_or_else(|| {
-                Fault::at("reading", "no sugar solution has this gravity at this temperature")
-            })?;
-        return Ok(Found::by(METHOD)
-            .number("corrected", corrected)
-            .number("correction", corrected - reading));
-    }
     let known = Scale::parse(scale).map_err(|error| Fault::at("scale", error))?;
     let found = correct(reading, known, celsius).map_err(|error| Fault::at("reading", error))?;
     let mut result = Found::by(found.method)
@@ -287,30 +277,22 @@ fn by_balling(given: &Given<'_>) -> Result<Found, Fault> {
 }
 
 fn refractive_index(given: &Given<'_>) -> Result<Found, Fault> {
-    let n = given.within("n_d20", 1.333, 1.45)?;
-    let by_fit = polynomial(&[17.670_464_6, 611.781_298, -1_442.563_33, 3_669.208_85], n - 1.36);
-    // The table's ends: 10 and 30 %.
-    if (1.347_82..=1.381_15).contains(&n) {
-        return Ok(Found::by("our fit to table II of OIV-MA-AS2-02, within 0.0034 %")
-            .number("sucrose_percent", by_fit)
-            .note("of unfermented liquid at 20 °C: alcohol makes it worthless"));
-    }
-    let far = [-99_127.453_6, 318_417.95, -413_145.80, 270_177.93, -88_885.21, 11_758.74];
-    Ok(Found::by("polynomial of degree 5")
-        .number("sucrose_percent", polynomial(&far, n))
-        .note("outside 10 to 30 %: this form reads about 0.02 % low against the table")
+    let found = refractometer::sucrose_percent(given.number("n_d20")?)
+        .map_err(|error| Fault::at("n_d20", error))?;
+    Ok(Found::by(found.method)
+        .number("sucrose_percent", found.percent)
+        .note_if(found.note.is_some(), found.note.unwrap_or_default())
         .note("of unfermented liquid at 20 °C: alcohol makes it worthless"))
 }
 
 fn must_sugar(given: &Given<'_>) -> Result<Found, Fault> {
-    let percent = given.within("sucrose_percent", 10.0, 30.0)?;
-    let sugar = polynomial(&[-20.267_443, 9.879_539_4, 0.036_413_955], percent);
-    let density = polynomial(&[1.000_668_39, 3.622_350_44e-3, 2.159_015_24e-5], percent);
-    Ok(Found::by("our fits to table II of OIV-MA-AS2-02; 16.83 g/L for 1 % vol")
-        .number("density_kg_l", density)
-        .number("sugar_g_l", sugar)
-        .number("sugar_g_kg", sugar / density)
-        .number("potential_abv_1683", sugar / 16.83)
+    let must = refractometer::must_sugar(given.number("sucrose_percent")?)
+        .map_err(|error| Fault::at("sucrose_percent", error))?;
+    Ok(Found::by(must.method)
+        .number("density_kg_l", must.density_kg_l)
+        .number("sugar_g_l", must.sugar_g_l)
+        .number("sugar_g_kg", must.sugar_g_kg)
+        .number("potential_abv_1683", must.potential_abv_1683)
         .note("of unfermented grape must at 20 °C"))
 }
 

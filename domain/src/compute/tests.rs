@@ -126,6 +126,14 @@ const PUBLISHED: &[(&str, &str, &str, f64, f64)] = &[
         1.0685,
         5e-5,
     ),
+    // density.md C: SG 1.0500 on a scale of 60 °F at 25 °C reads 0.00230 too low.
+    (
+        "hydrometer",
+        r#"{"reading":1.05,"scale":"sg_60_60","temperature_c":25}"#,
+        "correction",
+        0.002_30,
+        2e-5,
+    ),
     ("extract", r#"{"sg_20_20":1.094}"#, "brix", 22.456, 0.001),
     ("alcohol_by_gravity", r#"{"original_sg":1.048,"present_sg":1.012}"#, "abv_20c", 4.73, 0.005),
     ("water_density", r#"{"temperature_c":20}"#, "density_kg_m3", 998.2067, 0.0005),
