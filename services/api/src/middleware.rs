@@ -2,13 +2,13 @@
 //!
 //! From outside to inside: a number of our own for the request (one that the client sends is not believed), a line in
 //! the log (method, matched path, status, time; never a body, a query or a token), the safety headers, the catching of
-//! panics, and a deadline. Answers that other code made in plain text become problems here.
+//! panics, a deadline, and the arrival of a small body. Answers that other code made in plain text become problems here.
 
 use std::any::Any;
 use std::time::{Duration, Instant};
 
 use axum::Router;
-use axum::body::to_bytes;
+use axum::body::{Body, to_bytes};
 use axum::extract::{MatchedPath, Request, State};
 use axum::http::{HeaderMap, HeaderName, HeaderValue, header};
 use axum::middleware::{Next, from_fn, from_fn_with_state};
@@ -25,6 +25,8 @@ use crate::problem::{Kind, Problem};
 pub const REQUEST_ID: HeaderName = HeaderName::from_static("x-request-id");
 /// The longest a request may take until its answer begins (ours).
 pub const DEADLINE: Duration = Duration::from_secs(30);
+/// A body of at most so many bytes is read before the request is judged (ours).
+const SMALL_BODY: usize = 64 * 1024;
 /// The longest plain text that becomes a problem's detail.
 const LONGEST_TEXT: usize = 2048;
 
@@ -70,11 +72,27 @@ where
     router
         .fallback(no_such_address)
         .method_not_allowed_fallback(no_such_method)
+        .layer(from_fn(received))
         .layer(from_fn_with_state(surroundings.deadline, in_time))
         .layer(CatchPanicLayer::custom(panicked))
         .layer(from_fn_with_state(surroundings.behind_tls, safely))
         .layer(from_fn(logged))
         .layer(from_fn(numbered))
+}
+
+/// Has a small body arrive before anything is decided: one that lies unread when the answer goes out costs the client
+/// its connection, and perhaps the answer.
+async fn received(request: Request, next: Next) -> Response {
+    let announced = request.headers().get(header::CONTENT_LENGTH);
+    let announced = announced.and_then(|length| length.to_str().ok()?.parse::<usize>().ok());
+    if announced.is_none_or(|length| length == 0 || length > SMALL_BODY) {
+        return next.run(request).await;
+    }
+    let (parts, body) = request.into_parts();
+    match to_bytes(body, SMALL_BODY).await {
+        Ok(bytes) => next.run(Request::from_parts(parts, Body::from(bytes))).await,
+        Err(_) => Problem::new(Kind::NotReadable, "the body did not arrive whole").into_response(),
+    }
 }
 
 async fn no_such_address() -> Problem {

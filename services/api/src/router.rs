@@ -3,7 +3,6 @@
 use std::sync::Arc;
 
 use axum::Router;
-use axum::body::to_bytes;
 use axum::extract::{MatchedPath, Request, State};
 use axum::http::header;
 use axum::middleware::{Next, from_fn_with_state};
@@ -180,9 +179,6 @@ pub fn router(house: House, surroundings: Surroundings) -> Router {
     surround(routes, surroundings).with_state(house)
 }
 
-/// Bytes of a refused request's body that are read to keep its connection.
-const UNREAD: usize = 64 * 1024;
-
 /// Looks the request up in the permission table by method and matched path, with the roles the caller has now.
 async fn guard(State(house): State<House>, mut request: Request, next: Next) -> Response {
     let path = request.extensions().get::<MatchedPath>().map_or("", MatchedPath::as_str).to_owned();
@@ -196,11 +192,7 @@ async fn guard(State(house): State<House>, mut request: Request, next: Next) -> 
             request.extensions_mut().insert(caller);
             next.run(request).await
         }
-        Err(problem) => {
-            // A body that lies unread costs the client its connection.
-            let _ = to_bytes(request.into_body(), UNREAD).await;
-            problem.into_response()
-        }
+        Err(problem) => problem.into_response(),
     }
 }
 
