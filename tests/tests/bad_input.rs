@@ -7,7 +7,7 @@ use std::net::TcpStream;
 use serde_json::{Value, json};
 use tests::client::Asking;
 use tests::program::Options;
-use tests::{Answer, Cellar, Client, Program, cellar, on_both_engines, random_id};
+use tests::{Answer, Cellar, Client, Engine, Program, cellar, on_both_engines, random_id};
 
 /// One bad request and what its answer must point at.
 struct Bad {
@@ -463,4 +463,31 @@ fn send_in_pieces(cellar: &Cellar, path: &str, body: &[u8]) -> String {
     let read = stream.read(&mut answer).unwrap();
     let text = String::from_utf8_lossy(&answer[..read]).into_owned();
     text.lines().next().unwrap_or_default().to_owned()
+}
+
+/// The body of a request that is refused for what its head says may come later than the head, and the connection goes on.
+#[test]
+fn a_refused_request_whose_body_comes_late_keeps_its_connection() {
+    let cellar = Cellar::simulated(Engine::Sqlite);
+    let batch = cellar.open("B1", "3000", "L");
+    let (path, address) = (readings(&batch), cellar.program.url().strip_prefix("http://").unwrap());
+    let body = cellar.gravity_body("1.0940").to_string();
+    let mut stream = TcpStream::connect(address).unwrap();
+    for round in 0..2 {
+        let token = cellar.ana.token().unwrap();
+        write!(
+            stream,
+            "POST {path} HTTP/1.1\r\nhost: {address}\r\nauthorization: Bearer {token}\r\n\
+             content-type: application/json\r\ncontent-length: {}\r\n\r\n",
+            body.len()
+        )
+        .unwrap();
+        std::thread::sleep(std::time::Duration::from_millis(200));
+        stream.write_all(body.as_bytes()).unwrap();
+        let mut answer = vec![0; 4096];
+        let read = stream.read(&mut answer).unwrap();
+        let text = String::from_utf8_lossy(&answer[..read]);
+        assert!(text.starts_with("HTTP/1.1 400"), "request {round}: {text}");
+        assert!(text.contains("idempotency-key-missing"), "request {round}: {text}");
+    }
 }
