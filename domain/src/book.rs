@@ -10,6 +10,7 @@ mod decide;
 pub mod desk;
 mod entry_rows;
 pub mod in_force;
+mod loaded;
 pub mod readings;
 pub mod role;
 pub mod state;
@@ -18,4 +19,5 @@ pub mod table;
 pub mod tables;
 
 pub use decide::{ENGINE, MEANINGS, PRODUCT_CLASSES, identity};
-pub use desk::{Appended, Desk, Loaded, Position, Sealed, sha256_hex};
+pub use desk::{Appended, Desk, Position, Sealed, sha256_hex};
+pub use loaded::Loaded;
