@@ -15,7 +15,7 @@
 
 mod account;
 pub(crate) mod case;
-mod cautions;
+pub(crate) mod cautions;
 mod finding;
 mod measure;
 mod need;

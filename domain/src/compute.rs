@@ -1,8 +1,8 @@
 //! Computations offered on their own: one JSON object in, one out, by name.
 //!
 //! Plain JSON numbers, since nothing of this is hashed. Every result has `method` (the formula and its source) and
-//! `notes` (a range left, an estimate, a constant from memory). None of it is a laboratory analysis, and statutory
-//! tables prevail over a formula.
+//! `notes` (a range left, an estimate, a constant from memory, a hazard; last that local requirements prevail and that
+//! a computed figure is no laboratory analysis).
 
 mod chemistry;
 mod gravity;
@@ -12,6 +12,8 @@ mod spirit;
 use std::fmt::Display;
 
 use serde_json::{Map, Number, Value, json};
+
+use crate::checks::cautions::LAW;
 
 /// One member of an input.
 #[derive(Clone, Copy, Debug, Eq, PartialEq)]
@@ -210,7 +212,8 @@ impl Found {
             object.insert((*name).to_owned(), value.clone());
         }
         object.insert("method".to_owned(), self.method.into());
-        object.insert("notes".to_owned(), self.notes.clone().into());
+        let law = std::iter::once(LAW.text.to_owned());
+        object.insert("notes".to_owned(), self.notes.iter().cloned().chain(law).collect());
         Value::Object(object)
     }
 }

@@ -16,7 +16,7 @@ pub mod scale;
 pub mod sucrose;
 pub mod water;
 
-mod solve;
+pub(crate) mod solve;
 
 pub use alcohol::{AlcoholEstimate, expected_alcohol, expected_final_gravity};
 pub use hydrometer::{Corrected, at_calibration, correct};

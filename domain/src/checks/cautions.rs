@@ -30,9 +30,11 @@ pub fn always() -> [Caution; 2] {
     [CARBON_DIOXIDE.caution(), CONFINED_SPACE.caution()]
 }
 
-struct Row {
+/// One caution.
+pub(crate) struct Row {
     topic: &'static str,
-    text: &'static str,
+    /// As it is shown.
+    pub(crate) text: &'static str,
     source: &'static str,
 }
 
@@ -46,7 +48,7 @@ impl Row {
     }
 }
 
-static CARBON_DIOXIDE: Row = Row {
+pub(crate) static CARBON_DIOXIDE: Row = Row {
     topic: "carbon-dioxide",
     text: "Carbon dioxide has no smell, is heavier than air and gathers in pits and tanks. Measure it at low level before you go in, ventilate, never lean into a tank.",
     source: "OSHA 8 h limit 5,000 ppm, 29 CFR 1910.1000 Z-1 (from memory); immediately dangerous at 40,000 ppm (NIOSH, read at second hand)",
@@ -58,7 +60,7 @@ static CONFINED_SPACE: Row = Row {
     source: "29 CFR 1910.146(b), (c)(5)(ii)(C): oxygen below 19.5 % or above 23.5 %, flammable vapour above 10 % of its lower limit (edition of 2015); the last sentence from memory",
 };
 
-static FOAM: Row = Row {
+pub(crate) static FOAM: Row = Row {
     topic: "foam",
     text: "A nutrient sets gas free in an active ferment: slurry first, add slowly, leave headspace.",
     source: "common practice (from memory)",
@@ -76,7 +78,7 @@ static AMMONIA: Row = Row {
     source: "general chemistry; OSHA limit for ammonia 50 ppm, 29 CFR 1910.1000 (from memory)",
 };
 
-static SULFUR_DIOXIDE: Row = Row {
+pub(crate) static SULFUR_DIOXIDE: Row = Row {
     topic: "sulfur-dioxide",
     text: "Sulfur dioxide burns eyes and lungs and can trigger asthma; acid on sulfite sets it free at once. Add to water in open air, never lean over. It is an allergen to be declared.",
     source: "OSHA limit 5 ppm, 29 CFR 1910.1000; NIOSH (from memory)",
@@ -88,7 +90,7 @@ static CYANIDE: Row = Row {
     source: "Regulation (EU) 2019/787; CXC 70-2011",
 };
 
-static LAW: Row = Row {
+pub(crate) static LAW: Row = Row {
     topic: "law",
     text: "Local requirements prevail over any result shown here; a limit shown is not legal advice, and a computed figure is no laboratory analysis.",
     source: "statement of this program",

@@ -2,6 +2,8 @@
 
 use serde_json::json;
 
+use crate::checks::cautions;
+
 use super::{Calculation, Fault, Field, Found, Given, member};
 
 pub(super) const ALL: &[Calculation] = &[
@@ -68,8 +70,6 @@ const WEIGHTS: [(&str, f64); 7] = [
     ("S", 32.06),
     ("K", 39.098),
 ];
-/// g/mol of SO2.
-const SO2: f64 = 32.06 + 2.0 * 15.999;
 /// Sodium, from memory of the same table; the reference at hand does not list it.
 const SODIUM: f64 = 22.990;
 /// First dissociation of sulfurous acid at 20 °C, from memory.
@@ -85,11 +85,10 @@ fn sulfur_dioxide(given: &Given<'_>) -> Result<Found, Fault> {
 }
 
 fn of_salt(given: &Given<'_>) -> Result<Found, Fault> {
-    let (sulfur, oxygen) = (32.06, 15.999);
     let (fraction, remembered) = match given.text("salt")? {
-        "potassium_metabisulfite" => (2.0 * SO2 / (2.0 * (39.098 + sulfur) + 5.0 * oxygen), false),
-        "sodium_metabisulfite" => (2.0 * SO2 / (2.0 * (SODIUM + sulfur) + 5.0 * oxygen), true),
-        "ammonium_bisulfite" => (SO2 / (14.007 + 5.0 * 1.0080 + sulfur + 3.0 * oxygen), false),
+        "potassium_metabisulfite" => (2.0 * mass_of("SO2") / mass_of("K2S2O5"), false),
+        "sodium_metabisulfite" => (2.0 * mass_of("SO2") / (2.0 * SODIUM + mass_of("S2O5")), true),
+        "ammonium_bisulfite" => (mass_of("SO2") / mass_of("NH4HSO3"), false),
         _ => return Err(given.fault("salt", "unknown salt")),
     };
     let mass = given.within("mass_g", 0.0, 1e12)?;
@@ -97,6 +96,7 @@ fn of_salt(given: &Given<'_>) -> Result<Found, Fault> {
     Ok(Found::by("mass balance, IUPAC 2021 abridged atomic masses")
         .number("so2_mg_l", mass * fraction / volume * 1_000.0)
         .note("of a fresh salt: an old one has lost some")
+        .note(cautions::SULFUR_DIOXIDE.text)
         .note_if(remembered, "the atomic mass of sodium is from memory"))
 }
 
@@ -121,7 +121,7 @@ fn heat_and_gas(given: &Given<'_>) -> Result<Found, Fault> {
         .number("heat_kj", KJ_PER_KG * kg)
         .member("peak_w", json!(watts))
         .number("adiabatic_rise_k", KJ_PER_KG * sugar / 1_000.0 / (1.09 * 3.6))
-        .note("carbon dioxide displaces air in cellars and vessels: ventilate, measure before entering, never alone; local rules prevail"))
+        .note(cautions::CARBON_DIOXIDE.text))
 }
 
 fn storage_factor(given: &Given<'_>) -> Result<Found, Fault> {
@@ -159,6 +159,11 @@ fn molar_mass(given: &Given<'_>) -> Result<Found, Fault> {
         .whole()
         .ok_or_else(|| given.fault("formula", "not understood"))?;
     Ok(Found::by("IUPAC 2021 abridged standard atomic weights").number("g_per_mol", mass))
+}
+
+/// g/mol of a formula of these elements.
+fn mass_of(formula: &str) -> f64 {
+    Formula { rest: formula }.whole().unwrap_or(f64::NAN)
 }
 
 /// What is left to read of a formula.

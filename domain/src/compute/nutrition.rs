@@ -2,6 +2,8 @@
 
 use serde_json::Value;
 
+use crate::checks::cautions;
+
 use super::{Calculation, Fault, Field, Found, Given, member};
 use crate::nitrogen::{
     Ammonium, Brix, Demand, Formol, Need, SugarGramsPerLitre, Yan, line_by_brix_mg_l,
@@ -195,5 +197,6 @@ fn nutrient_dose(given: &Given<'_>) -> Result<Found, Fault> {
         .number("thiamine_hydrochloride_mg_l", mg_l("thiamine_hydrochloride"))
         .number("diammonium_phosphate_mg_l", dap)
         .number("ammonium_sulfate_mg_l", sulfate)
+        .note(cautions::FOAM.text)
         .note("a dose computed, no legal check: limits differ by country, product and premises"))
 }

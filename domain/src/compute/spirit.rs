@@ -3,10 +3,13 @@
 use serde_json::Value;
 
 use super::{Calculation, Fault, Field, Found, Given, member};
+use crate::densimetry::solve::rising_root;
 use crate::densimetry::{Celsius, MassFraction, ethanol_water};
 
 const METHOD: &str = "OIML R 22";
 const STRENGTH: &str = "% vol at 20 °C, 0 to 100";
+
+const VAPOUR: &str = "ethanol vapour ignites from sparks and flames: none near it, earthed vessels, ventilation; local rules prevail";
 
 pub(super) const ALL: &[Calculation] = &[
     Calculation {
@@ -93,22 +96,8 @@ fn by_volume(fraction: f64) -> f64 {
     100.0 * fraction * density_20c(fraction) / density_20c(1.0)
 }
 
-/// The mass fraction at which a rising function reaches zero.
-fn fraction_where(rising: impl Fn(f64) -> f64) -> f64 {
-    let (mut low, mut high) = (0.0_f64, 1.0_f64);
-    for _ in 0..60 {
-        let middle = low.midpoint(high);
-        if rising(middle) < 0.0 {
-            low = middle;
-        } else {
-            high = middle;
-        }
-    }
-    low.midpoint(high)
-}
-
 fn fraction_of_abv(abv: f64) -> f64 {
-    fraction_where(|fraction| by_volume(fraction) - abv)
+    rising_root(0.0, 1.0, |fraction| by_volume(fraction) - abv)
 }
 
 fn abv(given: &Given<'_>, name: &str) -> Result<f64, Fault> {
@@ -127,7 +116,7 @@ fn alcoholic_strength(given: &Given<'_>) -> Result<Found, Fault> {
         );
         return Err(Fault::at("density_kg_m3", detail));
     }
-    let fraction = fraction_where(|fraction| density - of(fraction));
+    let fraction = rising_root(0.0, 1.0, |fraction| density - of(fraction));
     Ok(Found::by("OIML R 22, solved for the mass fraction")
         .number("mass_fraction", fraction)
         .number("abv_20c", by_volume(fraction))
@@ -149,7 +138,7 @@ fn strength_convert(given: &Given<'_>) -> Result<Found, Fault> {
         "abv_20c" => fraction_of_abv(abv(given, name)?),
         "us_proof" => {
             let proof = given.within(name, 0.0, 200.0)?;
-            fraction_where(|fraction| us_proof(fraction) - proof)
+            rising_root(0.0, 1.0, |fraction| us_proof(fraction) - proof)
         }
         _ => given.within(name, 0.0, 1.0)?,
     };
@@ -203,7 +192,8 @@ fn dilution(given: &Given<'_>) -> Result<Found, Fault> {
         .number("final_volume_l", diluted)
         .number("water_l", water)
         .number("contraction_l", volume + water - diluted)
-        .note("volumes at 20 °C; measure the strength after mixing"))
+        .note("volumes at 20 °C; measure the strength after mixing")
+        .note(VAPOUR))
 }
 
 fn blend(given: &Given<'_>) -> Result<Found, Fault> {
@@ -229,7 +219,8 @@ fn blend(given: &Given<'_>) -> Result<Found, Fault> {
         .number("abv_20c", by_volume(fraction))
         .number("contraction_l", volume - blended)
         .number("pure_alcohol_l", ethanol / density_20c(1.0))
-        .note("volumes at 20 °C, ethanol and water alone; measure the strength after mixing"))
+        .note("volumes at 20 °C, ethanol and water alone; measure the strength after mixing")
+        .note(VAPOUR))
 }
 
 fn contaminant_convert(given: &Given<'_>) -> Result<Found, Fault> {
