@@ -34,11 +34,11 @@ pub(super) struct Bench {
     edge: Edge,
     /// The head that the latest group left: a log that still stands there needs no comparing with what was signed.
     left: Option<TreeHead>,
-    /// Subjects of earlier groups, and in which they were last needed. Good only if that was in this row of groups, or
-    /// if the locked counter agrees.
+    /// Subjects of earlier groups, and in which they were last needed. Good only if nobody else has written
+    /// since, or if the locked counter agrees.
     shelf: HashMap<Subject, (Arc<Loaded>, u64)>,
     /// The first of the latest groups between which nobody else has written.
-    row: u64,
+    unbroken_since: u64,
     /// What the latest group had on the desk.
     touched: HashSet<Subject>,
     group: u64,
@@ -62,7 +62,7 @@ impl Bench {
             left: None,
             shelf: HashMap::new(),
             touched: HashSet::new(),
-            row: 0,
+            unbroken_since: 0,
             group: 0,
         }
     }
@@ -78,7 +78,7 @@ impl Bench {
         let head = log::lock_head(conn, self.site.number).await?;
         let stands = head.tree_head();
         if self.left != Some(stands) {
-            self.row = self.group;
+            self.unbroken_since = self.group;
             let remembered = continuing::remembered(tools, &self.site)?;
             continuing::check(conn, &self.site, remembered, &stands).await?;
         }
@@ -210,14 +210,14 @@ impl Bench {
         sheet: &mut Sheet,
         subjects: &[Subject],
     ) -> Result<(), StoreError> {
-        let stands = |(_, group): &(Arc<Loaded>, u64)| self.row <= *group;
+        let stands = |(_, group): &(Arc<Loaded>, u64)| self.unbroken_since <= *group;
         let asked: Vec<Subject> =
             subjects.iter().filter(|s| !self.shelf.get(s).is_some_and(stands)).copied().collect();
         let counters = log::counts(conn, self.site.number, &asked).await?;
         for subject in subjects {
             let shelved = self.shelf.remove(subject);
             let n = match &shelved {
-                Some((loaded, group)) if self.row <= *group => loaded.n,
+                Some((loaded, group)) if self.unbroken_since <= *group => loaded.n,
                 _ => counters.get(subject).copied().unwrap_or_default(),
             };
             let shelved = shelved.map(|(loaded, _)| loaded);

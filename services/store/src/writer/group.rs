@@ -21,7 +21,7 @@ use crate::{Conn, Held, StoreError, Tx, sites};
 const KEPT: Duration = Duration::from_millis(50);
 
 /// How long a connection is kept at most while commands keep coming: then others who wait for it have their turn.
-const ROW: Duration = Duration::from_secs(1);
+const TURN: Duration = Duration::from_secs(1);
 
 /// Serves until nobody can send any more.
 pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
@@ -41,11 +41,11 @@ pub(super) async fn run(shared: Arc<Shared>, mut jobs: mpsc::Receiver<Job>) {
 struct Room {
     shared: Arc<Shared>,
     benches: HashMap<SiteId, Bench>,
-    kept: Option<Line>,
+    kept: Option<Connection>,
 }
 
 /// A connection, to be kept after a group if there is a seat for it.
-struct Line {
+struct Connection {
     held: Held,
     since: Instant,
     /// A group was committed on it.
@@ -106,39 +106,39 @@ impl Room {
     }
 
     async fn commit(&mut self, jobs: &[Job]) -> Result<Vec<Answer>, WriteError> {
-        let mut line = match self.kept.take() {
-            Some(line) => line,
-            None => self.line().await?,
+        let mut connection = match self.kept.take() {
+            Some(connection) => connection,
+            None => self.connection().await?,
         };
-        let answers = match self.commit_on(&mut line, jobs).await {
+        let answers = match self.commit_on(&mut connection, jobs).await {
             // Lost since the last group; nothing was written on it yet.
-            Err(error) if line.proven && error.is_unavailable() => {
-                drop(line);
-                line = self.line().await?;
-                self.commit_on(&mut line, jobs).await?
+            Err(error) if connection.proven && error.is_unavailable() => {
+                drop(connection);
+                connection = self.connection().await?;
+                self.commit_on(&mut connection, jobs).await?
             }
             outcome => outcome?,
         }?;
-        line.proven = true;
-        if line.seat.is_some() && line.since.elapsed() < ROW {
-            self.kept = Some(line);
+        connection.proven = true;
+        if connection.seat.is_some() && connection.since.elapsed() < TURN {
+            self.kept = Some(connection);
         }
         Ok(answers)
     }
 
-    async fn line(&self) -> Result<Line, StoreError> {
+    async fn connection(&self) -> Result<Connection, StoreError> {
         let seat = Arc::clone(&self.shared.seats).try_acquire_owned().ok();
         let held = self.shared.db.writer().await?;
-        Ok(Line { held, since: Instant::now(), proven: false, seat })
+        Ok(Connection { held, since: Instant::now(), proven: false, seat })
     }
 
     /// One transaction on a connection. The outer error is that it could not be begun.
     async fn commit_on(
         &mut self,
-        line: &mut Line,
+        connection: &mut Connection,
         jobs: &[Job],
     ) -> Result<Result<Vec<Answer>, WriteError>, StoreError> {
-        let tx = line.held.begin().await?;
+        let tx = connection.held.begin().await?;
         Ok(self.commit_in(tx, jobs).await)
     }
 
