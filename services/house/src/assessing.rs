@@ -1,8 +1,7 @@
 //! Asking the checks on a snapshot, outside the writer.
 
-use domain::book::Desk;
 use domain::book::assessing::{Prepared, Question, assess};
-use domain::book::command::{Propose, Stop};
+use domain::book::command::Propose;
 use store::writer::Receipt;
 
 use crate::caller::Caller;
@@ -25,7 +24,7 @@ impl House {
         self.ask(&site, &mut desk, |desk| assess(desk, question, now)).await
     }
 
-    /// Assesses a proposal on a snapshot and has it recorded; the writer takes the answer if nothing has moved.
+    /// Assesses a proposal on the states at hand and has it recorded; the writer takes the answer if nothing has moved.
     ///
     /// # Errors
     /// [`HouseError`].
@@ -44,28 +43,11 @@ impl House {
             already_done: false,
             actor: domain::ledger::entry::Actor::Person(caller.person),
         };
-        // If this fails the writer finds the same fault, under the lock, and says so.
-        propose.prepared = self.prepare(&caller, &question).await.ok().map(Box::new);
-        self.submit(asked(propose)).await
-    }
-
-    /// The same on what is at hand: the writer asks anew if anything has moved.
-    async fn prepare(&self, caller: &Caller, question: &Question) -> Result<Prepared, HouseError> {
         let site = self.site(caller.site).await?;
-        let published = self.inner.writers.published();
-        let (mut desk, now) = (Desk::new(site.id), self.now());
-        loop {
-            match assess(&desk, question, now) {
-                Ok(prepared) => return Ok(prepared),
-                Err(Stop::Refused(refusal)) => return Err(HouseError::Refused(refusal)),
-                Err(Stop::Need(needs)) => {
-                    let unknown = published.lay_known(&site, &mut desk, needs);
-                    if !unknown.is_empty() {
-                        let mut held = self.inner.db.reader().await?;
-                        published.lay(&mut held.conn(), &site, &mut desk, &unknown).await?;
-                    }
-                }
-            }
-        }
+        let now = self.now();
+        // The writer asks anew if anything has moved; if this fails it finds the same fault, under the lock, and says so.
+        let prepared = self.ask_at_hand(&site, |desk| assess(desk, &question, now)).await;
+        propose.prepared = prepared.ok().map(Box::new);
+        self.submit(asked(propose)).await
     }
 }

@@ -4,7 +4,7 @@ use std::collections::HashMap;
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use domain::book::Desk;
-use domain::book::command::{Act, Command, Need, Refusal, Stop};
+use domain::book::command::{Act, Command, Refusal, Stop};
 use domain::book::subject::Subject;
 use domain::ids::{CommandId, SiteId};
 use domain::ledger::entry::{Actor, Via};
@@ -136,12 +136,12 @@ impl House {
     /// [`HouseError`].
     pub async fn local_now(&self, site: &Site) -> Result<Stamp, HouseError> {
         // A book's time zone is that of its founding, which is not amended: any state of the site knows it.
-        let mut desk = Desk::new(site.id);
-        let published = self.inner.writers.published();
-        if !published.lay_known(site, &mut desk, vec![Need::Subject(site.id.into())]).is_empty() {
-            desk = self.desk(site, &[site.id.into()]).await?;
-        }
-        let zone = desk.site().ok().and_then(|s| s.founded.as_ref().map(|f| f.time_zone.clone()));
+        let zone = |desk: &Desk| {
+            desk.subject(site.id.into())?;
+            let founded = desk.site().ok().and_then(|site| site.founded.as_ref());
+            Ok(founded.map(|founded| founded.time_zone.clone()))
+        };
+        let zone = self.ask_at_hand(site, zone).await?;
         Ok(Stamp::in_zone(self.now(), zone.as_deref().unwrap_or("UTC")))
     }
 
@@ -203,7 +203,7 @@ impl House {
         Ok(desk)
     }
 
-    /// Asks something of a desk, laying on it what is needed until the answer comes.
+    /// Asks something of a desk, laying on it what is needed, as it stands now, until the answer comes.
     ///
     /// # Errors
     /// [`HouseError::Refused`], or the store's.
@@ -213,20 +213,45 @@ impl House {
         desk: &mut Desk,
         question: impl Fn(&Desk) -> Result<T, Stop>,
     ) -> Result<T, HouseError> {
+        self.answer(site, desk, Age::Now, question).await
+    }
+
+    /// Asks something that does not turn on the newest state, or that the writer asks again under its lock.
+    pub(crate) async fn ask_at_hand<T>(
+        &self,
+        site: &Site,
+        question: impl Fn(&Desk) -> Result<T, Stop>,
+    ) -> Result<T, HouseError> {
+        self.answer(site, &mut Desk::new(site.id), Age::AtHand, question).await
+    }
+
+    async fn answer<T>(
+        &self,
+        site: &Site,
+        desk: &mut Desk,
+        age: Age,
+        question: impl Fn(&Desk) -> Result<T, Stop>,
+    ) -> Result<T, HouseError> {
+        let published = self.inner.writers.published();
         let mut reader = None;
         loop {
-            match question(desk) {
+            let needs = match question(desk) {
                 Ok(answer) => return Ok(answer),
                 Err(Stop::Refused(refusal)) => return Err(HouseError::Refused(refusal)),
-                Err(Stop::Need(needs)) => {
-                    let held = match &mut reader {
-                        Some(held) => held,
-                        none => none.insert(self.inner.db.reader().await?),
-                    };
-                    let published = self.inner.writers.published();
-                    published.lay(&mut held.conn(), site, desk, &needs).await?;
-                }
+                Err(Stop::Need(needs)) => needs,
+            };
+            let needs = match age {
+                Age::Now => needs,
+                Age::AtHand => published.lay_known(site, desk, needs),
+            };
+            if needs.is_empty() {
+                continue;
             }
+            let held = match &mut reader {
+                Some(held) => held,
+                none => none.insert(self.inner.db.reader().await?),
+            };
+            published.lay(&mut held.conn(), site, desk, &needs).await?;
         }
     }
 
@@ -277,6 +302,15 @@ impl House {
         self.inner.writers.close().await;
         self.inner.db.close().await;
     }
+}
+
+/// How old a state may be that an answer is found on.
+#[derive(Clone, Copy)]
+enum Age {
+    /// As the database has it now.
+    Now,
+    /// As it was last read or written here, however long ago.
+    AtHand,
 }
 
 /// One thing asked, ready to be written.
