@@ -47,7 +47,8 @@ pub fn gravity(read: &GravityRead<'_>) -> Vec<Finding> {
 /// A specific gravity entered as extract looks like a ferment that has lost all of its sugar.
 fn other_scale(read: &GravityRead<'_>) -> Option<Finding> {
     let number: f64 = read.entered.parse().ok()?;
-    let is_extract = read.scale != Scale::Sg20_20 && (0.98..1.2).contains(&number);
+    let is_gravity = matches!(read.scale, Scale::Sg20_20 | Scale::Sg60_60);
+    let is_extract = !is_gravity && (0.98..1.2).contains(&number);
     let other = correct(number, Scale::Sg20_20, read.celsius).ok()?.sg_20_20;
     if !is_extract || !could_be(read, other) || could_be(read, read.sg) {
         return None;
@@ -231,6 +232,9 @@ mod tests {
         let (rule, sentence) = told(&read).unwrap();
         assert_eq!(rule, "plausibility.other-scale");
         assert_eq!(sentence, "1.0260 looks like a specific gravity, but was entered in plato.");
+        // A scale of gravity is no other scale, however odd the number.
+        let (rule, _) = told(&GravityRead { scale: Scale::Sg60_60, ..plums("1.0085") }).unwrap();
+        assert_eq!(rule, "plausibility.below-end");
         // A cider that really ends at 1 % extract.
         let dry = GravityRead { expected_end: Some(1.000), ..read };
         assert_eq!(told(&dry), None);

@@ -96,7 +96,8 @@ fn odd(
         let sg = value.corrected.as_ref()?.sg_20_20.parse().ok()?;
         let scale = Scale::parse(&value.unit).ok()?;
         let celsius = value.sample_temperature.as_ref().and_then(Temperature::celsius);
-        let (entered, celsius) = (value.value.as_str(), celsius.unwrap_or(20.0));
+        let celsius = celsius.unwrap_or(scale.calibration().0);
+        let entered = value.value.as_str();
         Some(GravityRead { entered, scale, celsius, sg, before, expected_end, rise })
     });
     Ok(gravities.flat_map(|read| plausibility::gravity(&read)).collect())
@@ -105,7 +106,7 @@ fn odd(
 /// The gravity at which a batch is expected to end, 20/20 °C.
 fn end_sg(expected: &ExpectedFinal) -> Option<f64> {
     let scale = Scale::parse(&expected.scale).ok()?;
-    Some(correct(expected.value.parse().ok()?, scale, 20.0).ok()?.sg_20_20)
+    Some(at_calibration(expected.value.parse().ok()?, scale).ok()?.sg_20_20)
 }
 
 /// What was read: which batch, when, and what else was found in the same sample.
