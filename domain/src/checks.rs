@@ -10,8 +10,8 @@
 //! `calcium_pantothenate`, `urea`, `sulfur_dioxide` and whatever else a rule set names. The `f64` of a situation are
 //! finite; none of them reaches an entry except as a decimal text.
 //!
-//! What is not here yet: ethyl carbamate, fusel pressure, process findings. Claims, residues, markets' contaminants, order
-//! and records are not about an addition alone: [`crate::rules::release`] answers those.
+//! What is not here yet: ethyl carbamate, fusel pressure, process findings. Claims, residues, markets' contaminants,
+//! order and records are not about an addition alone: [`crate::rules::release`] answers those.
 
 mod account;
 pub(crate) mod case;

@@ -54,7 +54,8 @@ pub struct SpecificGravity(f64);
 impl SpecificGravity {
     /// The lightest gravity accepted. Lighter than pure ethanol (0.79): only a slip goes below it.
     pub const LIGHTEST: f64 = 0.7;
-    /// The heaviest gravity accepted. Heavier than the strongest syrup (70 % sucrose is 1.35): only a slip goes above it.
+    /// The heaviest gravity accepted. Heavier than the strongest syrup (70 % sucrose is 1.35): only a slip goes above
+    /// it.
     pub const HEAVIEST: f64 = 1.6;
 
     /// # Errors

@@ -4,28 +4,28 @@
 //! extract: a molasses wash that stops at SG 1.0155 is finished there, not at 1.000.
 //!
 //! # The curve
-//! Everything runs on the clock of a typical ferment (`forecast/clock.rs`): slow while the yeast grows, then, in
-//! z = 1 − √(1 − f), at a constant speed, which is a constant use of sugar early on that fades towards the expected end and
-//! never passes it. The readings are first made monotone (sugar does not come back), then:
+//! Everything runs on the clock of a typical ferment (`forecast/clock.rs`): slow while the yeast grows, then,
+//! in z = 1 − √(1 − f), at a constant speed, which is a constant use of sugar early on that fades towards the expected
+//! end and never passes it. The readings are first made monotone (sugar does not come back), then:
 //!
-//! - **after the last reading** the present speed of the clock is carried on. It comes from a filter whose speed wanders at
-//!   random (the local linear trend of A. C. Harvey, *Forecasting, Structural Time Series Models and the Kalman Filter*,
-//!   1989), so late readings count most, readings close together count little, and those taken while the yeast still grows
-//!   count little too;
+//! - **after the last reading** the present speed of the clock is carried on. It comes from a filter whose speed
+//!   wanders at random (the local linear trend of A. C. Harvey, *Forecasting, Structural Time Series Models and the
+//!   Kalman Filter*, 1989), so late readings count most, readings close together count little, and those taken while
+//!   the yeast still grows count little too;
 //! - **between two readings** the clock goes evenly from one to the other;
 //! - **before the first** all that is known is that less was used.
 //!
 //! # The band
-//! 90 % of the judgement, made of: the error of the reading and of the original extract, enlarged if readings went backwards; what growth still leaves open; the
-//! uncertainty of the speed, enlarged if it changed much lately; and how far ahead the time lies. Uncertain progress is a
-//! factor, never negative.
+//! 90 % of the judgement, made of: the error of the reading and of the original extract, enlarged if readings went
+//! backwards; what growth still leaves open; the uncertainty of the speed, enlarged if it changed much lately; and how
+//! far ahead the time lies. Uncertain progress is a factor, never negative.
 //!
 //! # What it does not promise
-//! It knows no sticking, no feeding, no change of temperature to come. It takes the expected final extract as given: a wrong
-//! one shifts everything, and the band does not allow for it. Sugar added after the original extract was taken must be put
-//! into that extract by the caller. Its figures are fitted on simulated wine ferments and hold on others of them
-//! (`forecast/calibration.rs` says how well); beers, simulated by other models, come earlier than forecast, though mostly
-//! within the band. On real cellars it was never verified.
+//! It knows no sticking, no feeding, no change of temperature to come. It takes the expected final extract as given: a
+//! wrong one shifts everything, and the band does not allow for it. Sugar added after the original extract was taken
+//! must be put into that extract by the caller. Its figures are fitted on simulated wine ferments and hold on others of
+//! them (`forecast/calibration.rs` says how well); beers, simulated by other models, come earlier than forecast, though
+//! mostly within the band. On real cellars it was never verified.
 
 #[cfg(test)]
 mod calibration;
@@ -42,10 +42,10 @@ use clock::{clock, growth_doubt, growth_left};
 use score::share_below;
 use speed::Speed;
 
-/// Standard deviation of one gravity as a cellar takes it, with what scale, gas on the float and layers in the tank add: one
-/// degree Oechsle, two marks of a scale divided into halves. A judgement of ours, not a measurement, and unconfirmed: no
-/// published figure was found. The simulated cellar that the band is held against reads with this error; the demo's readings
-/// had no part in it.
+/// Standard deviation of one gravity as a cellar takes it, with what scale, gas on the float and layers in the tank
+/// add: one degree Oechsle, two marks of a scale divided into halves. A judgement of ours, not a measurement, and
+/// unconfirmed: no published figure was found. The simulated cellar that the band is held against reads with this
+/// error; the demo's readings had no part in it.
 pub const READING_SD_SG: f64 = 0.001;
 /// Degrees of extract per unit of gravity: the slope of the extract cubic at SG 1.04 (259 at 1.00, 230 at 1.07).
 const EXTRACT_PER_GRAVITY: f64 = 241.4;
@@ -261,8 +261,8 @@ impl Course {
         FractionForecast::new(basis, law)
     }
 
-    /// A reading with its own error and that of the original extract, which was read in the same way: an error e there shifts
-    /// the fraction f by e (1 − f).
+    /// A reading with its own error and that of the original extract, which was read in the same way: an error e there
+    /// shifts the fraction f by e (1 − f).
     fn level(&self, point: &Point) -> Level {
         let of_origin = self.origin_sd * (1.0 - point.fraction).clamp(0.0, 1.0);
         Level { fraction: point.fraction, sd: self.sd.hypot(of_origin) }
@@ -288,8 +288,8 @@ impl Level {
     }
 }
 
-/// A distribution of the clock, written as the clock that each normal score stands for. Every law rises with the score and with
-/// time.
+/// A distribution of the clock, written as the clock that each normal score stands for. Every law rises with the score
+/// and with time.
 #[derive(Clone, Debug, PartialEq)]
 enum Law {
     /// Anything from nothing to the first reading.

@@ -5,7 +5,8 @@
 //! The list of a form's rules carries the form's name (`[[dose_limit]]`), so a slip is reported at its line.
 //!
 //! What an addition may do is asked by [`crate::checks::assess`]; everything else (release by market, claims, order of
-//! steps, gauges, entries in time, keeping) by the functions of [`release`]. [`check`] tells all faults of a site's own set.
+//! steps, gauges, entries in time, keeping) by the functions of [`release`]. [`check`] tells all faults of a site's own
+//! set.
 //!
 //! Each rule says how well it is known: **READ** in the source named, **FROM MEMORY** (works, and says so in its
 //! citation), or **unconfirmed** (ships switched off and says why). Local law prevails over anything written here.

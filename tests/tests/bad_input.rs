@@ -465,7 +465,8 @@ fn send_in_pieces(cellar: &Cellar, path: &str, body: &[u8]) -> String {
     text.lines().next().unwrap_or_default().to_owned()
 }
 
-/// The body of a request that is refused for what its head says may come later than the head, and the connection goes on.
+/// The body of a request that is refused for what its head says may come later than the head, and the connection goes
+/// on.
 #[test]
 fn a_refused_request_whose_body_comes_late_keeps_its_connection() {
     let cellar = Cellar::simulated(Engine::Sqlite);

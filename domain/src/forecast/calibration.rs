@@ -2,8 +2,8 @@
 //!
 //! Everything here is SIMULATED. The ferments are published models, solved: the trajectories of
 //! `tests/reference/kinetics_sugar.csv`, and 600 more drawn around them and solved by `kinetics`, which is itself held
-//! against that file. They are read by `cellar`: as often as people read, with one degree Oechsle of error, up to 30 % of
-//! the sugar. Nothing here says how the forecast does in a real cellar, whose ferments stick, are cooled, and end
+//! against that file. They are read by `cellar`: as often as people read, with one degree Oechsle of error, up to 30 %
+//! of the sugar. Nothing here says how the forecast does in a real cellar, whose ferments stick, are cooled, and end
 //! elsewhere than expected; the end is given as it truly is.
 //!
 //! The figures in `clock.rs` and `speed.rs` were chosen on drawn ferments of the seeds 1 and 2. What is tested here are
@@ -19,8 +19,8 @@ use cellar::{Batch, Dice};
 use figures::Figures;
 use kinetics::{Change, Ferment, Model, Trajectory};
 
-/// Never used while the forecast's figures were chosen; three others, which had been looked at between two versions, were
-/// given up for these.
+/// Never used while the forecast's figures were chosen; three others, which had been looked at between two versions,
+/// were given up for these.
 const TEST_SEEDS: [u64; 3] = [201, 202, 203];
 /// Batches of one seed.
 const BATCHES: usize = 200;
@@ -137,8 +137,9 @@ fn the_reference_trajectories_are_forecast_as_well_as_the_band_says() {
     meets_all_three(&figures);
 }
 
-/// Beers grow their yeast for longer than the models that the clock was fitted on, so that they come EARLIER than forecast:
-/// of those called 40 to 60 % late most are late. What still holds is asserted; that last figure is only printed.
+/// Beers grow their yeast for longer than the models that the clock was fitted on, so that they come EARLIER than
+/// forecast: of those called 40 to 60 % late most are late. What still holds is asserted; that last figure is only
+/// printed.
 #[test]
 fn beers_are_forecast_with_a_band_that_holds_but_too_slowly() {
     let batches = read_references('B', 13);
@@ -149,7 +150,8 @@ fn beers_are_forecast_with_a_band_that_holds_but_too_slowly() {
     assert!(figures.half_held.share() >= 0.85 && figures.later_held.share() >= 0.80);
 }
 
-/// Also early on, when readings hardly differ from one another, the next day falls into the band; the band is wide then.
+/// Also early on, when readings hardly differ from one another, the next day falls into the band; the band is wide
+/// then.
 #[test]
 fn the_next_day_falls_into_the_band_from_the_second_reading_on() {
     let mut held = figures::Share::default();

@@ -1,18 +1,19 @@
 //! The clock of a typical ferment: the scale on which the sugar used rises evenly with time.
 //!
 //! With z = 1 − √(1 − f) for the fraction f used, a ferment that has grown its yeast uses sugar at a nearly constant
-//! speed v in z. Before that its yeast is growing and the speed is lower: dz/dt = v s²/(s² + c²), s = z + a. Solved, the
-//! clock u = s − c²/s rises by v in every hour, and s = (u + √(u² + 4c²))/2 leads back.
+//! speed v in z. Before that its yeast is growing and the speed is lower: dz/dt = v s²/(s² + c²), s = z + a. Solved,
+//! the clock u = s − c²/s rises by v in every hour, and s = (u + √(u² + 4c²))/2 leads back.
 //!
 //! # Where its figures come from
-//! They are figures of ours, fitted on simulated ferments, and so is the share of wandering in `speed.rs`: 800 of the seeds 1
-//! and 2 of `calibration/cellar.rs`, read with 0.001 SG of error. The form comes from 400 more of seed 9, left to themselves:
-//! dz/dt, relative to that at z = 0.2, had the mean logarithms −2.66 at z = 0.002, −1.49 at 0.01, −0.53 at 0.03, −0.10 at 0.07,
-//! +0.05 at 0.3. The figures are those with which, on the 800, half of the proposals called 40 to 60 % late were late and the
-//! bands held 92 to 93 %, the error of the half-sugar time being about a twentieth above the smallest found. The seeds
-//! that test them had no part in it. The demo and the reference trajectories, with other errors, were looked at on the way.
-//! It is a compromise: asked from readings of 10 to 20 % used, the forecast of the next day runs ahead of three ferments in
-//! four (within the band for 87 %), that of half the sugar later on makes up for it.
+//! They are figures of ours, fitted on simulated ferments, and so is the share of wandering in `speed.rs`: 800 of the
+//! seeds 1 and 2 of `calibration/cellar.rs`, read with 0.001 SG of error. The form comes from 400 more of seed 9, left
+//! to themselves: dz/dt, relative to that at z = 0.2, had the mean logarithms −2.66 at z = 0.002, −1.49 at 0.01, −0.53
+//! at 0.03, −0.10 at 0.07, +0.05 at 0.3. The figures are those with which, on the 800, half of the proposals called 40
+//! to 60 % late were late and the bands held 92 to 93 %, the error of the half-sugar time being about a twentieth above
+//! the smallest found. The seeds that test them had no part in it. The demo and the reference trajectories, with other
+//! errors, were looked at on the way. It is a compromise: asked from readings of 10 to 20 % used, the forecast of the
+//! next day runs ahead of three ferments in four (within the band for 87 %), that of half the sugar later on makes up
+//! for it.
 
 /// a: what stands for the yeast that was pitched.
 const PITCHED: f64 = 0.006;
@@ -35,7 +36,8 @@ pub(super) fn fraction(clock: f64) -> f64 {
     1.0 - left * left
 }
 
-/// Standard deviation of the clock at a fraction because growth differs from batch to batch: nearly none once it is over.
+/// Standard deviation of the clock at a fraction because growth differs from batch to batch: nearly none once it is
+/// over.
 pub(super) fn growth_doubt(fraction: f64) -> f64 {
     GROWTH_DOUBT * growth_left(fraction)
 }

@@ -3,8 +3,8 @@
 use super::clock::{clock, growth_doubt};
 use super::{Point, SCORE_90};
 
-/// Speed of the clock per hour where nothing is known: 0.05 a day, which ends in three weeks. With [`MOST_DOUBT`] the 90 % band
-/// spans 0.01 to 0.26 a day, from a slow mead to a hot molasses wash. A judgement of ours.
+/// Speed of the clock per hour where nothing is known: 0.05 a day, which ends in three weeks. With [`MOST_DOUBT`] the
+/// 90 % band spans 0.01 to 0.26 a day, from a slow mead to a hot molasses wash. A judgement of ours.
 const UNKNOWN_PER_HOUR: f64 = 0.05 / 24.0;
 /// The slowest mean speed believed, per hour: 0.01 a day would take over three months. It keeps a batch in its lag
 /// from being called still for ever.
@@ -16,8 +16,9 @@ const MOST_DOUBT: f64 = 1.0;
 
 /// Readings tell a speed once they differ by so many times their error; before, they say no more than one of them.
 const SEEN: f64 = 2.0;
-/// How far the speed wanders where nothing is seen of it: by so much of its square over the whole span of the readings, a
-/// factor of e^±0.12. Fitted as `clock.rs` says, with one simulated ferment in four changing its temperature by up to 4 K.
+/// How far the speed wanders where nothing is seen of it: by so much of its square over the whole span of the readings,
+/// a factor of e^±0.12. Fitted as `clock.rs` says, with one simulated ferment in four changing its temperature by up to
+/// 4 K.
 const WANDER_UNSEEN: f64 = 0.015;
 
 /// Speed of the clock, with its doubt as a logarithm.
@@ -29,7 +30,8 @@ pub(super) struct Speed {
     pub(super) per_hour: f64,
     /// Standard deviation of its logarithm now.
     doubt_now: f64,
-    /// Correlation of its error with that of the last reading, from 0 to 1: what reads too far makes it too fast as well.
+    /// Correlation of its error with that of the last reading, from 0 to 1: what reads too far makes it too fast as
+    /// well.
     pub(super) with_level: f64,
     /// Variance by which the speed itself wanders, clock² per h³.
     wander: f64,
@@ -44,8 +46,8 @@ impl Speed {
         wander: 0.0,
     };
 
-    /// What of the growth left on the clock may be over without having been read, for a speed that is not known: all of it,
-    /// but no more than the upper edge of the 90 % band of the speed gets through by then.
+    /// What of the growth left on the clock may be over without having been read, for a speed that is not known: all of
+    /// it, but no more than the upper edge of the 90 % band of the speed gets through by then.
     pub(super) fn skipped(&self, growth_left: f64, progress: f64) -> f64 {
         if self.known { 0.0 } else { growth_left.min(progress * (SCORE_90 * MOST_DOUBT).exp()) }
     }
@@ -97,7 +99,8 @@ struct Measured {
 }
 
 impl Measured {
-    /// The reading error is half the clock between the reading with it and without, so that it stays finite at both ends.
+    /// The reading error is half the clock between the reading with it and without, so that it stays finite at both
+    /// ends.
     fn from(point: Point, sd: f64) -> Self {
         let used = point.fraction.min(1.0);
         let of_reading = 0.5 * (clock(used + sd) - clock(used - sd));
@@ -108,8 +111,9 @@ impl Measured {
 
 /// The variance per hour by which the speed wanders.
 ///
-/// Without evidence, [`WANDER_UNSEEN`] of the square of the mean speed over the whole span. Evidence is each change from one interval's speed to the next, less what reading error explains;
-/// a change that is mostly reading error counts little.
+/// Without evidence, [`WANDER_UNSEEN`] of the square of the mean speed over the whole span. Evidence is each change
+/// from one interval's speed to the next, less what reading error explains; a change that is mostly reading error
+/// counts little.
 fn wander(measured: &[Measured], mean: f64, span_h: f64) -> f64 {
     let (mut changed, mut hours) = (WANDER_UNSEEN * mean.powi(2), span_h);
     for three in measured.windows(3) {

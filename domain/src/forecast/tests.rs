@@ -5,8 +5,8 @@ use proptest::prelude::*;
 use super::*;
 use crate::densimetry::{Scale, SpecificGravity, correct, extract};
 
-/// Grape must of the demo (invented): gravity as corrected and fraction used as printed there; the first at 09-09 09:00,
-/// then daily at 08:00.
+/// Grape must of the demo (invented): gravity as corrected and fraction used as printed there; the first at 09-09
+/// 09:00, then daily at 08:00.
 const GRAPE_MUST: [(f64, f64); 20] = [
     (1.0940, 0.0),
     (1.0930, 0.009),
@@ -235,7 +235,8 @@ fn the_band_and_the_probabilities_say_the_same() {
     within(seen.probability_more_than(1.0), 0.0, 0.0);
 }
 
-/// From one hour to the next it may narrow by a little, since what is left to be used shrinks; over half a day it widens.
+/// From one hour to the next it may narrow by a little, since what is left to be used shrinks; over half a day it
+/// widens.
 #[test]
 fn half_a_day_more_ahead_widens_the_band() {
     for ((span, readings), known, most_h) in [(must(), 5, 72), (must(), 10, 72), (wash(), 4, 12)] {

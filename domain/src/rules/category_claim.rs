@@ -1,4 +1,5 @@
-//! What a name asks of what carries it: materials, strength at the still, age, container, strength and sweetness at sale.
+//! What a name asks of what carries it: materials, strength at the still, age, container, strength and sweetness at
+//! sale.
 //!
 //! A batch that breaks it may still be made: the claim is given up. What is not known yet is not held against it.
 
@@ -189,7 +190,8 @@ impl Ageing {
 mod tests {
     use super::*;
 
-    /// The numbers are those of Reg. (EU) 2019/787 Annex I: 86 % vol and 37.5 % vol of category 9, the ways to age of 5.
+    /// The numbers are those of Reg. (EU) 2019/787 Annex I: 86 % vol and 37.5 % vol of category 9, the ways to age of
+    /// 5.
     const CLAIM: &str = r#"
         id = "fruit-spirit"
         claim = "fruit_spirit"

@@ -1,5 +1,5 @@
-//! How much of something is in a product, in whatever way a law or a laboratory writes it, and the exact way from one to
-//! the other: mg/L of product, µg/kg of product, g/hL of pure alcohol, a share of the volume, or a bare number (pH).
+//! How much of something is in a product, in whatever way a law or a laboratory writes it, and the exact way from one
+//! to the other: mg/L of product, µg/kg of product, g/hL of pure alcohol, a share of the volume, or a bare number (pH).
 //!
 //! With `s` the strength in % vol and `ρ` the density in kg/L (µg/µL = g/L; 1 kg/L = 1,000 g/L):
 //!

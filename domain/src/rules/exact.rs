@@ -232,8 +232,8 @@ impl Ratio {
     }
 }
 
-/// The concentration of `total` (base units × [`PARTS`]) in mg/L (or mL/L) with three digits: rounded up where it is over
-/// a limit and down where it is not, so that what is shown never contradicts what was decided.
+/// The concentration of `total` (base units × [`PARTS`]) in mg/L (or mL/L) with three digits: rounded up where it is
+/// over a limit and down where it is not, so that what is shown never contradicts what was decided.
 pub fn concentration(total: i128, volume_ul: i64, over: bool) -> Option<String> {
     let per = i128::from(volume_ul) * (PARTS / 1_000_000);
     if per <= 0 {

@@ -1,8 +1,8 @@
-//! Questions to the adopted sets that are not about an addition: may it be released, and where; does it keep its claims;
-//! is a step in order and gauged; was it entered in time; how long is it kept.
+//! Questions to the adopted sets that are not about an addition: may it be released, and where; does it keep its
+//! claims; is a step in order and gauged; was it entered in time; how long is it kept.
 //!
-//! Each function asks every rule of its forms that is on, in every set that binds [`Place`]; nothing is assumed that the
-//! caller does not hand in.
+//! Each function asks every rule of its forms that is on, in every set that binds [`Place`]; nothing is assumed that
+//! the caller does not hand in.
 
 use jiff::civil::Date;
 

@@ -2,7 +2,8 @@
 //!
 //! From outside to inside: a number of our own for the request (one that the client sends is not believed), a line in
 //! the log (method, matched path, status, time; never a body, a query or a token), the safety headers, the catching of
-//! panics, a deadline, and the arrival of a small body. Answers that other code made in plain text become problems here.
+//! panics, a deadline, and the arrival of a small body. Answers that other code made in plain text become problems
+//! here.
 
 use std::any::Any;
 use std::time::{Duration, Instant};

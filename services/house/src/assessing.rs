@@ -45,7 +45,8 @@ impl House {
         };
         let site = self.site(caller.site).await?;
         let now = self.now();
-        // The writer asks anew if anything has moved; if this fails it finds the same fault, under the lock, and says so.
+        // The writer asks anew if anything has moved; if this fails it finds the same fault, under the lock, and says
+        // so.
         let prepared = self.ask_at_hand(&site, |desk| assess(desk, &question, now)).await;
         propose.prepared = prepared.ok().map(Box::new);
         self.submit(asked(propose)).await

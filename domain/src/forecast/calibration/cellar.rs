@@ -64,8 +64,8 @@ pub(super) struct Batch {
 impl Batch {
     /// Reads a ferment; `None` if fewer than three readings fall into its first part, or half is never used.
     ///
-    /// The expected end is the true one. The original extract is the first reading with its error, as in the book.
-    /// 10 g of sugar in a litre are one degree of apparent extract, and dry is 0.09 of the original below nothing: both as
+    /// The expected end is the true one. The original extract is the first reading with its error, as in the book. 10 g
+    /// of sugar in a litre are one degree of apparent extract, and dry is 0.09 of the original below nothing: both as
     /// in the demo's must (246 g/L from 22.46 to −2.09).
     pub(super) fn read(truth: Trajectory, sugar_g_l: f64, dice: &mut Dice) -> Option<Self> {
         let width = sugar_g_l / 10.0;
@@ -101,8 +101,8 @@ fn hydrometer(extract_true: f64, dice: &mut Dice) -> f64 {
     extract::brix(SpecificGravity::new(read).unwrap())
 }
 
-/// Hours since pitching at which a cellar reads: at pitching, then once, twice or three times a day give or take half an
-/// hour, one in twelve forgotten.
+/// Hours since pitching at which a cellar reads: at pitching, then once, twice or three times a day give or take half
+/// an hour, one in twelve forgotten.
 fn hours_read(dice: &mut Dice) -> Vec<f64> {
     const ROUNDS: [&[f64]; 3] = [&[8.0], &[8.0, 17.0], &[7.0, 13.0, 19.0]];
     let pitched = dice.between(8.0, 18.0);
@@ -123,9 +123,9 @@ fn hours_read(dice: &mut Dice) -> Vec<f64> {
     hours
 }
 
-/// A ferment drawn within the range to which the models were fitted or in which the references were computed: 12 to 30 °C,
-/// 200 to 300 g/L sugar, 80 to 330 mg N/L, 1 to 6 million cells in a millilitre. One in four is fed, one in four changes
-/// its temperature by up to 4 K, in the first five days.
+/// A ferment drawn within the range to which the models were fitted or in which the references were computed: 12 to 30
+/// °C, 200 to 300 g/L sugar, 80 to 330 mg N/L, 1 to 6 million cells in a millilitre. One in four is fed, one in four
+/// changes its temperature by up to 4 K, in the first five days.
 pub(super) fn drawn(dice: &mut Dice) -> Ferment {
     let model = match dice.between(0.0, 3.0) {
         fast if fast < 1.0 => Model::ColemanFast,

@@ -1,8 +1,8 @@
 //! Simulated ferments: published fermentation models, solved. Test code; nothing here reaches a verdict.
 //!
-//! Coleman, Fish and Block, Appl. Environ. Microbiol. 73 (2007) 5875, eqs 1 to 8; Cramer, Vlassides and Block, Biotechnol.
-//! Bioeng. 77 (2002) 49. The constants were READ in two programs each; the intercept of the fermentation speed of the
-//! first, −2.30 or −2.98, is unconfirmed, so both are used.
+//! Coleman, Fish and Block, Appl. Environ. Microbiol. 73 (2007) 5875, eqs 1 to 8; Cramer, Vlassides and Block,
+//! Biotechnol. Bioeng. 77 (2002) 49. The constants were READ in two programs each; the intercept of the fermentation
+//! speed of the first, −2.30 or −2.98, is unconfirmed, so both are used.
 
 /// Hours of one step.
 const STEP_H: f64 = 0.25;
@@ -144,7 +144,8 @@ impl Trajectory {
         Self { hours, used }
     }
 
-    /// The fraction used at an hour since pitching: the cubic through four neighbours (Catmull and Rom); held at the ends.
+    /// The fraction used at an hour since pitching: the cubic through four neighbours (Catmull and Rom); held at the
+    /// ends.
     pub(super) fn at(&self, hour: f64) -> f64 {
         let last = self.used.len() - 1;
         let cell = self.hours.partition_point(|&at| at <= hour).clamp(1, last) - 1;

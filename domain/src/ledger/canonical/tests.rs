@@ -117,8 +117,8 @@ fn control_characters_and_text_not_in_normal_form_are_refused() {
     }
 }
 
-/// The JSON library reads such an object as the value that its text says, so that what a reader sees would not be what a
-/// checker saw.
+/// The JSON library reads such an object as the value that its text says, so that what a reader sees would not be what
+/// a checker saw.
 #[test]
 fn a_name_with_a_meaning_of_its_own_is_refused() {
     for name in ["$serde_json::private::RawValue", "$serde_json::private::Number"] {

@@ -59,8 +59,8 @@ pub(crate) struct NewValue {
     /// Decimal text.
     #[schema(example = "1.0665")]
     value: String,
-    /// UCUM unit, or for a gravity its scale: `sg_20_20`, `sg_60_60`, `plato`, `brix`, `oechsle`, `kmw`, `baume_145`, or
-    /// `refractometer_brix` of unfermented liquid.
+    /// UCUM unit, or for a gravity its scale: `sg_20_20`, `sg_60_60`, `plato`, `brix`, `oechsle`, `kmw`, `baume_145`,
+    /// or `refractometer_brix` of unfermented liquid.
     #[schema(example = "sg_20_20")]
     unit: String,
     /// `<`, `>` or `about`.
